@@ -1,0 +1,158 @@
+"""Fixed numbers and truncated distributions: draws by redrawing, moments by quadrature."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from functools import cached_property
+from typing import Literal
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.special import ndtr, ndtri
+
+Floats = NDArray[np.float64]
+Kind = Literal["fixed", "normal", "lognormal", "uniform"]
+LEAST_PROBABILITY = 0.01
+
+
+@dataclass(frozen=True)
+class Distribution:
+    """A positive or free quantity of a person.
+
+    Attributes
+    ----------
+    kind : fixed, normal, lognormal or uniform
+    mean, sd : of the variable itself before truncation, also for lognormal; `mean` alone is the
+        value of a fixed quantity
+    minimum, maximum : values outside are redrawn, never clipped; the ends of a uniform quantity
+
+    Raises
+    ------
+    ValueError : sd not positive, an empty interval, or one that holds under 1 % of the probability
+    """
+
+    kind: Kind
+    mean: float = 0.0
+    sd: float = 0.0
+    minimum: float = -math.inf
+    maximum: float = math.inf
+
+    def __post_init__(self) -> None:
+        if self.kind == "fixed":
+            return
+        if not self.minimum < self.maximum:
+            raise ValueError(f"min {self.minimum:g} is not below max {self.maximum:g}")
+        if self.kind == "uniform":
+            if not (math.isfinite(self.minimum) and math.isfinite(self.maximum)):
+                raise ValueError("a uniform quantity needs min and max")
+            return
+        if not self.sd > 0.0:
+            raise ValueError(f"sd must be above 0, not {self.sd:g}")
+        if self.kind == "lognormal" and not self.mean > 0.0:
+            raise ValueError(f"a lognormal quantity needs a mean above 0, not {self.mean:g}")
+        if self.probability < LEAST_PROBABILITY:
+            raise ValueError(
+                f"[{self.minimum:g}, {self.maximum:g}] holds {100 * self.probability:.2g} % "
+                f"of the probability; at least {100 * LEAST_PROBABILITY:g} % is needed"
+            )
+
+    @cached_property
+    def log_parameters(self) -> tuple[float, float]:
+        """Mean and standard deviation of the logarithm of a lognormal quantity."""
+        variance = math.log1p((self.sd / self.mean) ** 2)
+        return math.log(self.mean) - 0.5 * variance, math.sqrt(variance)
+
+    def _cumulative(self, x: float) -> float:
+        if self.kind == "normal":
+            return float(ndtr((x - self.mean) / self.sd))
+        if x <= 0.0:
+            return 0.0
+        m, s = self.log_parameters
+        return float(ndtr((math.log(x) - m) / s))
+
+    @cached_property
+    def probability(self) -> float:
+        """Share of the untruncated probability within [minimum, maximum]."""
+        if self.kind in ("fixed", "uniform"):
+            return 1.0
+        return self._cumulative(self.maximum) - self._cumulative(self.minimum)
+
+    def quantile(self, p: Floats | float) -> Floats:
+        """Value below which the share p of the truncated distribution lies."""
+        p = np.asarray(p, dtype=np.float64)
+        if self.kind == "fixed":
+            return np.full(p.shape, self.mean)
+        if self.kind == "uniform":
+            return np.asarray(self.minimum + p * (self.maximum - self.minimum))
+        low = self._cumulative(self.minimum)
+        z = ndtri(np.clip(low + p * self.probability, 0.0, 1.0))
+        if self.kind == "normal":
+            x = self.mean + self.sd * z
+        else:
+            m, s = self.log_parameters
+            x = np.exp(m + s * z)
+        return np.asarray(np.clip(x, self.minimum, self.maximum), dtype=np.float64)
+
+    @cached_property
+    def nodes(self) -> tuple[Floats, Floats]:
+        """Values and weights with which sums stand for expectations (Gauss-Legendre in the probability)."""
+        if self.kind == "fixed":
+            return np.array([self.mean]), np.array([1.0])
+        edges = np.concatenate(
+            [[0.0, 1e-6, 1e-4, 1e-3, 1e-2], np.linspace(0.1, 0.9, 9), [0.99, 0.999, 0.9999, 1 - 1e-6, 1.0]]
+        )
+        x, w = np.polynomial.legendre.leggauss(12)
+        width = np.diff(edges)
+        p = (edges[:-1, None] + 0.5 * width[:, None] * (x + 1.0)).ravel()
+        return self.quantile(p), (0.5 * width[:, None] * w).ravel()
+
+    def expectation(self, power: float = 1.0) -> float:
+        """E[x^power] of the truncated distribution."""
+        x, w = self.nodes
+        return float(math.fsum(w * x**power))
+
+    def draw(self, generator: np.random.Generator, count: int) -> Floats:
+        """`count` values. The i-th is the i-th accepted draw, whatever the count."""
+        if self.kind == "fixed":
+            return np.full(count, self.mean)
+        if self.kind == "uniform":
+            return generator.uniform(self.minimum, self.maximum, count)
+        kept: list[Floats] = []
+        missing = count
+        while missing > 0:
+            size = int(missing / self.probability * 1.1) + 8
+            if self.kind == "normal":
+                x = generator.normal(self.mean, self.sd, size)
+            else:
+                x = generator.lognormal(*self.log_parameters, size)
+            x = x[(x >= self.minimum) & (x <= self.maximum)][:missing]
+            kept.append(x)
+            missing -= x.size
+        return np.concatenate(kept) if kept else np.zeros(0)
+
+    def text(self, unit: str = "") -> str:
+        """As a person writes it: `normal, mean 1.87, sd 0.186, 1.3 to 2.6 Hz`."""
+        u = f" {unit}" if unit else ""
+        if self.kind == "fixed":
+            return f"{self.mean:.6g}{u}"
+        if self.kind == "uniform":
+            return f"uniform, {self.minimum:.4g} to {self.maximum:.4g}{u}"
+        ends = ""
+        if math.isfinite(self.minimum) and math.isfinite(self.maximum):
+            ends = f", {self.minimum:.4g} to {self.maximum:.4g}"
+        elif math.isfinite(self.minimum):
+            ends = f", from {self.minimum:.4g}"
+        elif math.isfinite(self.maximum):
+            ends = f", to {self.maximum:.4g}"
+        return f"{self.kind}, mean {self.mean:.4g}, sd {self.sd:.4g}{ends}{u}"
+
+
+def fixed(value: float) -> Distribution:
+    """A quantity that is the same for everybody."""
+    return Distribution("fixed", value)
+
+
+def normal(mean: float, sd: float, minimum: float = -math.inf, maximum: float = math.inf) -> Distribution:
+    """A truncated normal quantity; `mean` and `sd` before truncation."""
+    return Distribution("normal", mean, sd, minimum, maximum)

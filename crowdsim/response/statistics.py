@@ -1,0 +1,83 @@
+"""Order statistics and moments of a measure over realisations."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.special import bdtr
+
+Floats = NDArray[np.float64]
+LEAST_FOR_INTERVAL = 72  # of the 95 % value at 95 % confidence
+
+
+def percentile_rank(count: int, share: float) -> int:
+    """k of the value x_(k) that stands for the percentile: ceil(share n)."""
+    return max(1, math.ceil(share * count - 1e-9))
+
+
+def interval_ranks(count: int, share: float, confidence: float = 0.95) -> tuple[int, int] | None:
+    """Ranks (r, s) of the distribution-free, equal-tailed interval [x_(r), x_(s)] of a percentile.
+
+    P(x_(r) > quantile) and P(x_(s) < quantile) are each at most (1 - confidence)/2, by the
+    binomial distribution of the number below the quantile (textbook, e.g. David & Nagaraja 2003,
+    section 7.1, from memory). None where the sample is too small.
+
+    >>> interval_ranks(100, 0.95), interval_ranks(71, 0.95)
+    ((90, 100), None)
+    """
+    tail = 0.5 * (1.0 - confidence)
+    below = bdtr(np.arange(count, dtype=np.float64), count, share)  # P(B <= k), k = 0 .. n-1
+    low = int(np.searchsorted(below, tail, side="right"))  # largest r with P(B <= r - 1) <= tail
+    high = int(np.searchsorted(below, 1.0 - tail, side="left")) + 1  # least s with P(B >= s) <= tail
+    if low < 1 or high > count:
+        return None
+    return low, high
+
+
+@dataclass(frozen=True)
+class Percentile:
+    """A percentile and its interval; `low` and `high` are None where the sample is too small."""
+
+    share: float
+    value: float
+    low: float | None
+    high: float | None
+
+
+@dataclass(frozen=True)
+class Distribution1D:
+    """A measure over the realisations."""
+
+    count: int
+    mean: float
+    sd: float
+    median: float
+    p95: Percentile
+    largest: float
+
+
+def percentile(values: Floats, share: float = 0.95, confidence: float = 0.95) -> Percentile:
+    """x_(ceil(share n)) and its distribution-free interval."""
+    ordered = np.sort(np.asarray(values, dtype=np.float64))
+    count = ordered.size
+    ranks = interval_ranks(count, share, confidence)
+    value = float(ordered[percentile_rank(count, share) - 1])
+    if ranks is None:
+        return Percentile(share, value, None, None)
+    return Percentile(share, value, float(ordered[ranks[0] - 1]), float(ordered[ranks[1] - 1]))
+
+
+def describe(values: Floats) -> Distribution1D:
+    """Mean, standard deviation (n - 1), median, 95 % value and the largest."""
+    values = np.asarray(values, dtype=np.float64)
+    return Distribution1D(
+        count=values.size,
+        mean=float(np.mean(values)),
+        sd=float(np.std(values, ddof=1)) if values.size > 1 else 0.0,
+        median=float(np.median(values)),
+        p95=percentile(values),
+        largest=float(np.max(values)),
+    )
