@@ -109,10 +109,6 @@ class ModalModel:
                 return m
         raise KeyError(name)
 
-    def offsets(self, direction: str) -> tuple[float, ...]:
-        """Offsets that matter for `direction`: only the vertical ordinate varies across the deck."""
-        return self.edges if direction == "vertical" else (0.0,)
-
     def largest(self, mode: Mode, direction: str) -> tuple[float, float, float]:
         """(s, e, ordinate) where |ordinate| is largest; of equals the one nearest mid-span."""
         offsets = self.edges if direction == "vertical" and mode.twist is not None else (0.0,)

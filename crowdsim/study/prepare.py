@@ -333,7 +333,7 @@ def _stations(model: ModalModel, points: tuple[Point, ...]) -> tuple[Floats, tup
     s = np.unique(np.round(s, 9))
     s = s[np.concatenate([[True], np.diff(s) > 1e-6 * model.length])]
     return s, tuple(
-        Point("", float(x), e, direction) for direction in model.directions for e in model.offsets(direction) for x in s
+        Point("", float(x), e, direction) for direction in model.directions for e in model.edges for x in s
     )
 
 

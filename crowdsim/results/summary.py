@@ -1,0 +1,137 @@
+"""The summary of a results file, computed from the file piece by piece: memory does not grow with it."""
+
+from __future__ import annotations
+
+import json
+from dataclasses import asdict, dataclass
+from pathlib import Path
+from typing import Any
+
+import h5py
+import numpy as np
+
+from crowdsim.response.statistics import Distribution1D, describe, percentile_rank
+from crowdsim.results.reader import _strings, open_file
+
+_SLAB = 8_000_000  # numbers of the envelope in memory at a time
+
+
+@dataclass(frozen=True)
+class PointSummary:
+    """Response at one recorded point."""
+
+    name: str
+    s: float
+    e: float
+    direction: str
+    peak: Distribution1D
+    rms: Distribution1D
+    running_rms_max: Distribution1D
+
+
+@dataclass(frozen=True)
+class DeckSummary:
+    """The largest peak anywhere on the deck in one direction.
+
+    s, e : where the 95 % value of the peak is largest
+    """
+
+    direction: str
+    s: float
+    e: float
+    peak: Distribution1D
+
+
+@dataclass(frozen=True)
+class CaseSummary:
+    """One case in numbers."""
+
+    name: str
+    realisations: int
+    duration: float
+    warm_up: float
+    time_step: float
+    persons_on_deck: float
+    crossings_mean: float
+    points: tuple[PointSummary, ...]
+    deck: tuple[DeckSummary, ...]
+    modes: tuple[dict[str, Any], ...]
+    assumptions: tuple[str, ...]
+
+
+@dataclass(frozen=True)
+class Summary:
+    """A run in numbers."""
+
+    title: str
+    seed: int
+    version: str
+    file: str
+    findings: tuple[str, ...]
+    cases: tuple[CaseSummary, ...]
+
+    def as_dict(self) -> dict[str, Any]:
+        """For JSON."""
+        return asdict(self)
+
+
+def summarise(path: str | Path, title: str) -> Summary:
+    """The summary of the results file at `path`. Raises ResultsError."""
+    with open_file(path) as file:
+        return Summary(
+            title=title,
+            seed=int(file.attrs["seed"]),
+            version=str(file.attrs["crowdsim_version"]),
+            file=str(path),
+            findings=tuple(json.loads(file.attrs["findings"])),
+            cases=tuple(_case(file["cases"][k]) for k in sorted(file["cases"], key=int)),
+        )
+
+
+def _case(group: Any) -> CaseSummary:
+    rows, place = group["realisations"], group["points"]
+    peak, rms, running = (rows[k][()] for k in ("peak", "rms", "running_rms_max"))
+    names, directions = _strings(place["name"]), _strings(place["direction"])
+    modes = group["modes"]
+    keys = ("frequency", "damping", "modal_mass", "added_mass")
+    return CaseSummary(
+        name=str(group.attrs["name"]),
+        realisations=int(peak.shape[0]),
+        duration=float(group.attrs["duration"]),
+        warm_up=float(group.attrs["warm_up"]),
+        time_step=float(group.attrs["time_step"]),
+        persons_on_deck=float(group.attrs["persons_on_deck"]),
+        crossings_mean=float(np.mean(rows["crossings"][()])),
+        points=tuple(
+            PointSummary(
+                names[i], float(place["s"][i]), float(place["e"][i]), directions[i],
+                describe(peak[:, i]), describe(rms[:, i]), describe(running[:, i]),
+            )
+            for i in range(len(names))
+        ),
+        deck=tuple(
+            _deck(d, group["deck"]) for d in dict.fromkeys(directions) if isinstance(group["deck"].get(d), h5py.Group)
+        ),
+        modes=tuple(
+            {"name": n, **{k: float(modes[k][i]) for k in keys}} for i, n in enumerate(_strings(modes["name"]))
+        ),
+        assumptions=tuple(json.loads(group.attrs["assumptions"])),
+    )  # fmt: skip
+
+
+def _deck(direction: str, deck: Any) -> DeckSummary:
+    data = deck[direction]["peak_envelope"]
+    count, across, along = data.shape
+    largest = np.zeros(count)
+    best, where = -1.0, (0, 0)
+    rank = percentile_rank(count, 0.95) - 1
+    columns = max(1, _SLAB // max(count, 1))
+    for e in range(across):
+        for s in range(0, along, columns):
+            slab = data[:, e, s : s + columns]
+            largest = np.maximum(largest, slab.max(axis=1))
+            values = np.partition(slab, rank, axis=0)[rank]
+            j = int(np.argmax(values))
+            if values[j] > best:
+                best, where = float(values[j]), (e, s + j)
+    return DeckSummary(direction, float(deck["s"][where[1]]), float(deck["e"][where[0]]), describe(largest))

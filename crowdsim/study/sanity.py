@@ -1,0 +1,203 @@
+"""Plausibility of a whole scenario before anything runs: numbers, rule, remedy.
+
+A finding that is an error stops the run; a warning is shown and stored with the results.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+
+from crowdsim.bridge.modal import ModalModel, Mode
+from crowdsim.bridge.ordinates import Table
+from crowdsim.crowd.arrivals import GivenArrivals
+from crowdsim.dynamics.step import HARMONIC_ANGLE
+from crowdsim.response.statistics import LEAST_FOR_INTERVAL
+from crowdsim.scenario.reader import Scenario
+from crowdsim.study.prepare import FASTEST_SHARE, SLOWEST_SHARE, Case
+
+MASS_PER_AREA = (15.0, 1500.0)  # kg/m2 of modal mass at a unit ordinate, common practice
+DAMPING_LIKELY = 0.03
+END_SHARE = 0.02
+EXCURSION = 0.02
+OUTSIDE_SHARE = 0.01
+CROWDED = 0.3
+EFFECT_OF_PEOPLE = 0.2
+
+
+@dataclass(frozen=True)
+class Finding:
+    """One remark: error or warning, the key it is about, what, and what to do."""
+
+    level: str
+    key: str
+    text: str
+
+    def line(self) -> str:
+        """For a person."""
+        return f"{self.key}: {self.text}"
+
+
+def findings(scenario: Scenario, cases: list[Case], realisations: int) -> list[Finding]:
+    """Everything worth saying about the scenario before it runs, each once."""
+    found: list[Finding] = []
+    for mode in cases[0].bare.modes:
+        found += _mode(cases[0].bare, mode)
+    for case in cases:
+        found += _case(scenario, case)
+    if realisations < LEAST_FOR_INTERVAL:
+        found.append(
+            Finding(
+                "warning",
+                "run.realisations",
+                f"{realisations} realisations: the 95 % value has a distribution-free interval from "
+                f"{LEAST_FOR_INTERVAL} on; raise the number for an interval",
+            )
+        )
+    return list(dict.fromkeys(found))
+
+
+def _mode(model: ModalModel, mode: Mode) -> list[Finding]:
+    found: list[Finding] = []
+    key = f"mode {mode.name}"
+
+    def warn(text: str) -> None:
+        found.append(Finding("warning", key, text))
+
+    if mode.damping > DAMPING_LIKELY:
+        warn(
+            f"damping {100 * mode.damping:.3g} % of critical; footbridges without dampers have 0.2 to 2 %, and "
+            f"above {100 * DAMPING_LIKELY:g} % a percentage may stand for a fraction: 0.5 % is 0.005 or \"0.5 %\""
+        )
+    top = max((abs(model.largest(mode, d)[2]) for d in mode.directions), default=0.0)
+    if top > 0.0:
+        per_area = mode.modal_mass / top**2 / (model.length * model.width)
+        low, high = MASS_PER_AREA
+        if not low <= per_area <= high:
+            hint = "t or kN taken for kg?" if per_area < low else "N or g taken for kg?"
+            warn(
+                f"modal mass {mode.modal_mass:.4g} kg over the largest ordinate squared is {per_area:.3g} kg per m2 of "
+                f"deck; {low:g} to {high:g} is usual ({hint})"
+            )
+        if not 0.5 <= top <= 2.0:
+            warn(
+                f"largest ordinate {top:.3g}: the modal mass must belong to these ordinates as they stand; nothing is "
+                "rescaled (for unit ordinates the largest is 1)"
+            )
+    for direction in ("vertical", "lateral", "longitudinal", "twist"):
+        shape = getattr(mode, direction)
+        if shape is None:
+            continue
+        ends = np.abs(shape(np.array([0.0, model.length])))
+        largest = float(np.abs(shape(model.fine)).max())
+        if largest > 0.0 and float(ends.max()) > END_SHARE * largest:
+            warn(
+                f"{direction} ordinate {float(ends.max()):.3g} at an end of the deck, not nought: a person's force "
+                "begins there with a step; right for a free or sprung end, otherwise mend the table"
+            )
+        if isinstance(shape, Table) and shape.used == "spline" and shape.excursion() > EXCURSION:
+            warn(
+                f"the spline through the {direction} table leaves the range of its values by "
+                f"{100 * shape.excursion():.2g} % of the largest; give more points, or interpolation = \"monotone\""
+            )
+    if not mode.driven:
+        warn(
+            f"moves the deck only {' and '.join(mode.directions)}: this version has vertical forces alone, so its "
+            "response is nought here, which says nothing of the bridge"
+        )
+    return found
+
+
+def _case(scenario: Scenario, case: Case) -> list[Finding]:
+    found: list[Finding] = []
+    run = scenario.file.run
+
+    def warn(key: str, text: str) -> None:
+        found.append(Finding("warning", key, text))
+
+    angle = case.choice.mode_angle
+    if not math.isfinite(case.choice.peak_error + case.choice.history_error):
+        found.append(
+            Finding(
+                "error",
+                "run.time_step",
+                f"{case.choice.time_step:.4g} s: omega dt = {angle:.3g} at the highest mode makes {run.integration} "
+                "unstable; leave time_step out, or make it smaller",
+            )
+        )
+        return found
+    if run.time_step is not None and (angle > HARMONIC_ANGLE or case.choice.expected_error > 2e-3):
+        warn(
+            "run.time_step",
+            f"{case.choice.time_step:.4g} s: omega dt = {angle:.2g} at the highest mode, expected error "
+            f"{100 * case.choice.expected_error:.2g} %; leave time_step out for about 0.02 %",
+        )
+    if not any(m.driven for m in case.model.modes):
+        found.append(Finding("error", "mode", "no mode has a vertical or twist ordinate: no force would drive any"))
+        return found
+    if not _reached(case):
+        warn(
+            f"case {case.name}",
+            "no harmonic of any stream reaches the frequency of any mode; the response is quasi-static. Check "
+            f"frequencies ({', '.join(f'{m.frequency:.3g}' for m in case.driven)} Hz) and pace",
+        )
+    for stream in case.streams:
+        key = f"stream {stream.walkers.name}"
+        if stream.outside > OUTSIDE_SHARE:
+            low, high = stream.load.pace_range
+            warn(
+                key,
+                f"{100 * stream.outside:.3g} % of the persons have a pace outside {low:g} to {high:g} Hz, where "
+                f"{stream.load.name} holds; their factors are held at the limit",
+            )
+        arrivals = stream.walkers.arrivals
+        if isinstance(arrivals, GivenArrivals):
+            slowest = case.bare.length / stream.walkers.speed_quantile(SLOWEST_SHARE)
+            last = arrivals.times[-1] + slowest
+            if last > case.end + 1e-9:
+                warn(
+                    "run.duration",
+                    f"ends at {case.end:.4g} s; the last of {key} may walk until {last:.4g} s; a duration of "
+                    f"{math.ceil(last - case.warm_up)} s sees everybody off",
+                )
+    given = all(isinstance(s.walkers.arrivals, GivenArrivals) for s in case.streams)
+    if not given and case.warm_up < case.warm_up_needed - 0.01:
+        warn(
+            "run.warm_up",
+            f"{case.warm_up:.4g} s is shorter than the slowest crossing plus three time constants "
+            f"({case.warm_up_needed:.4g} s): the deck is not yet in its usual state; leave warm_up out",
+        )
+    density = case.persons / (case.bare.length * case.bare.width)
+    if density > CROWDED:
+        warn(
+            f"case {case.name}",
+            f"{density:.2g} persons/m2 on average: above about {CROWDED:g} people slow each other down, which is left "
+            "out here; give the pace and speed of the crowd you mean",
+        )
+    if density > EFFECT_OF_PEOPLE and case.people == "none":
+        warn(
+            f"case {case.name}",
+            f"{density:.2g} persons/m2 and people = \"none\": their mass (and the damping that walking bodies add) is "
+            'left out; people = "mass" adds the mass',
+        )
+    if case.duration < case.window - 1e-9:
+        warn(
+            "comfort.window",
+            f"{case.window:g} s is longer than the observed {case.duration:g} s: no whole window fits; make duration "
+            "at least as long",
+        )
+    return found
+
+
+def _reached(case: Case) -> bool:
+    for stream in case.streams:
+        low = float(stream.walkers.pace.quantile(SLOWEST_SHARE))
+        high = float(stream.walkers.pace.quantile(FASTEST_SHARE))
+        for k, factor in enumerate(stream.load.factors(np.array([0.5 * (low + high)]))[0], start=1):
+            for mode in case.driven:
+                band = max(3.0 * mode.damping, 0.03) * mode.frequency
+                if factor > 0.0 and k * low - band <= mode.frequency <= k * high + band:
+                    return True
+    return False
