@@ -60,5 +60,5 @@ class RunError(CrowdsimError):
     """A run failed on the way."""
 
 
-class Interrupted(CrowdsimError):
+class InterruptedRunError(CrowdsimError):
     """The user stopped a run; what was finished is kept."""

@@ -53,7 +53,7 @@ class Walkers:
         speed = np.multiply.outer(p, q).ravel()
         order = np.argsort(speed, kind="stable")
         weight = np.cumsum(np.multiply.outer(u, v).ravel()[order])
-        return float(speed[order][min(np.searchsorted(weight, share), order.size - 1)])
+        return float(speed[order[min(int(np.searchsorted(weight, share)), order.size - 1)]])
 
 
 @dataclass(frozen=True)

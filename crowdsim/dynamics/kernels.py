@@ -453,7 +453,9 @@ def _part_chunk(force, table, at, work, q, start, stop, column, row, two, many):
 
 
 @_compiled(inline="always")
-def _person_run(force, table, at, work, ordinates, twist, modes, column, n, start, stop, persons, numbers, loads, p, many):
+def _person_run(
+    force, table, at, work, ordinates, twist, modes, column, n, start, stop, persons, numbers, loads, p, many
+):
     """Adds person p's force over samples start..stop of the run that begins at sample n."""
     person = persons[p, 0]
     rate = numbers[p, 1]
@@ -502,7 +504,8 @@ def force_block(force, table, work, ordinates, twist, modes, n, samples, low, hi
             if start < stop:
                 at = _U((p & mask) * SLOT)
                 _person_run(
-                    force, table, at, work, ordinates, twist, modes, column, m, start, stop, persons, numbers, loads, p, many
+                    force, table, at, work, ordinates, twist, modes, column, m, start, stop, persons, numbers,
+                    loads, p, many
                 )  # fmt: skip
 
 
@@ -839,7 +842,8 @@ def realisation(
                 history[zero + i - history_start, q] = row[keep + i]
             if begin < end:
                 point_block(
-                    row, keep, begin, end, warm - zero, window, segment, squares[q], lanes, running[q], peaks[q], best[q]
+                    row, keep, begin, end, warm - zero, window, segment, squares[q], lanes, running[q],
+                    peaks[q], best[q]
                 )  # fmt: skip
         if begin < end:
             envelope_block(motion, stations, envelope, begin, end, warm - zero, scratch[64:], tops)

@@ -98,9 +98,7 @@ def step_coefficients(
     mass = np.broadcast_to(np.asarray(modal_mass, dtype=np.float64), frequency.shape)
     angle = 2.0 * np.pi * frequency * time_step
     if np.any(angle >= min(scheme.stability_limit, np.pi)):
-        raise ValueError(
-            f"time step {time_step:g} s: omega dt = {angle.max():.3g} reaches the limit of a stable step"
-        )
+        raise ValueError(f"time step {time_step:g} s: omega dt = {angle.max():.3g} reaches the limit of a stable step")
     k, c = numerical_properties(scheme, frequency, damping, time_step)
     h, beta = time_step, scheme.beta
     effective = 1.0 + 0.5 * h * c + beta * h * h * k
@@ -132,6 +130,4 @@ def acceleration_response(
     v = 2.0 * np.pi * load * time_step
     k, c = numerical_properties(scheme, np.array([frequency]), np.array([damping]), time_step)
     b = matched_stiffness(scheme.beta, v) / time_step**2
-    return np.asarray(
-        1.0 / (1.0 - 1j * c[0] * 0.5 * time_step / np.tan(0.5 * v) - k[0] / b), dtype=np.complex128
-    )
+    return np.asarray(1.0 / (1.0 - 1j * c[0] * 0.5 * time_step / np.tan(0.5 * v) - k[0] / b), dtype=np.complex128)

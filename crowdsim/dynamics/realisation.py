@@ -122,7 +122,7 @@ class Control:
     progress: NDArray[np.int64] = field(default_factory=lambda: np.zeros(1, np.int64))
 
 
-class NotFinite(ArithmeticError):
+class NotFiniteError(ArithmeticError):
     """The motion of a realisation grew beyond the numbers."""
 
 
@@ -149,9 +149,7 @@ def deck_table(vertical: Floats, twist: Floats | None, length: float, before: in
         padded[:, :modes] = values
         return padded.ravel()
 
-    return Deck(
-        pack(vertical), np.zeros(0) if twist is None else pack(twist), modes, length / CELLS, before
-    )
+    return Deck(pack(vertical), np.zeros(0) if twist is None else pack(twist), modes, length / CELLS, before)
 
 
 def _rows(passages: Passages, deck: Deck, sample: float, samples: int) -> tuple[NDArray[np.int64], Floats, Floats]:
@@ -209,7 +207,7 @@ def run(
     Raises
     ------
     ValueError : arrays that do not fit each other
-    NotFinite : the motion is not finite
+    NotFiniteError : the motion is not finite
     """
     modes = deck.modes
     if step.shape != (modes, 11):
@@ -253,12 +251,13 @@ def run(
         recorder.total, recorder.warm, recorder.window, recorder.segment, block, weights, kept, begin,
         aligned(-(-modes // ROWS) * ROWS * STRIDE), aligned(_slots(rows, samples, block) * SLOT), aligned(WORK),
         np.zeros((pair, TAPS + block)), np.zeros((pair, factor - 1, block)), motion, np.zeros((pair, 3)),
-        y, aligned(SCRATCH_SIZE), np.zeros((kernels.PARTS + 1, pair)), peaks, squares, running, best, envelope, control.stop, control.progress,
+        y, aligned(SCRATCH_SIZE), np.zeros((kernels.PARTS + 1, pair)), peaks, squares, running, best, envelope,
+        control.stop, control.progress,
     )  # fmt: skip
     if status == kernels.STOPPED:
         return None
     if status == kernels.NOT_FINITE:
-        raise NotFinite("the motion is not finite")
+        raise NotFiniteError("the motion is not finite")
     return Response(
         peak=best[:, 0].copy(),
         rms=np.sqrt(squares.sum(axis=1) / (recorder.total - 1 - recorder.warm)),

@@ -16,6 +16,7 @@ Floats = NDArray[np.float64]
 MODE_ANGLE = 0.3  # rad per step at the highest mode
 HARMONIC_ANGLE = 0.4
 ORDINATE_ERROR = 1e-4
+ENTRY_ERROR = 1e-4  # a person's force begins and ends with a kink between samples; measured in the tests
 _ROUND = 20
 _LEAST = 100
 
@@ -47,8 +48,8 @@ class StepChoice:
 
     @property
     def expected_error(self) -> float:
-        """Bound on the relative error of a peak."""
-        return self.peak_error + self.history_error + self.ordinate_error + self.sampling_error
+        """Relative error of a peak to expect: the four parts, and at least that of stepping on and off."""
+        return max(ENTRY_ERROR, self.peak_error + self.history_error + self.ordinate_error + self.sampling_error)
 
 
 def parabola_error(angle: float) -> float:
@@ -138,4 +139,6 @@ def choose(
         history = max(history, float(np.abs(numerical - exact).max()) / scale)
     angle = 2.0 * math.pi * highest_harmonic * dt * factor
     between = float(between_error(factor, np.array(angle))) if factor > 1 else 0.0
-    return StepChoice(n, factor, parabola_error(2.0 * math.pi * top * dt), history, curve, between, 2.0 * math.pi * top * dt)
+    return StepChoice(
+        n, factor, parabola_error(2.0 * math.pi * top * dt), history, curve, between, 2.0 * math.pi * top * dt
+    )

@@ -20,15 +20,6 @@ def _columns(*columns: Floats | float) -> Floats:
     return np.stack(np.broadcast_arrays(*columns), axis=-1).astype(np.float64)
 
 
-def _relative(*shares: float):  # type: ignore[no-untyped-def]
-    row = np.array(shares)
-
-    def of(mean):  # type: ignore[no-untyped-def]
-        return lambda pace: row * mean(pace)
-
-    return of
-
-
 def bachmann_ammann_1987(pace: Floats) -> Floats:
     """a1 = 0.4 at 2.0 Hz rising to 0.5 at 2.4 Hz, a2 = a3 = 0.1; valid for 1.6 to 2.4 Hz.
 
@@ -70,6 +61,11 @@ def young_2001_mean(pace: Floats) -> Floats:
         0.026 + 0.0050 * 3 * f,
         0.010 + 0.0051 * 4 * f,
     )
+
+
+def _young_spread(pace: Floats) -> Floats:
+    """Coefficients of variation 0.17, 0.40, 0.40, 0.40 (Young 2001, from memory) times the means."""
+    return young_2001_mean(pace) * np.array([0.17, 0.40, 0.40, 0.40])
 
 
 def young_2001_design(pace: Floats) -> Floats:
@@ -139,7 +135,7 @@ WALKING = {
         LoadSet("kerr-1998", "Kerr 1998, from memory", "walking", (1.0, 3.0), kerr_1998,
                 spread=lambda f: _columns(0.16 * kerr_1998(f)[:, 0], 0.0, 0.0)),
         LoadSet("young-2001-mean", "Young 2001, mean values, from memory", "walking", (1.0, 2.8), young_2001_mean,
-                spread=_relative(0.17, 0.40, 0.40, 0.40)(young_2001_mean)),
+                spread=_young_spread),
         LoadSet("young-2001-design", "Young 2001, design values, from memory", "walking", (1.0, 2.8),
                 young_2001_design),
         LoadSet("iso-10137-2007", "ISO 10137:2007, Annex A, walking, from memory", "walking", (1.2, 2.4),

@@ -8,7 +8,7 @@ import platform
 import socket
 from collections.abc import Sequence
 from dataclasses import dataclass
-from datetime import datetime, timezone
+from datetime import UTC, datetime
 from pathlib import Path
 from types import TracebackType
 from typing import Any
@@ -218,7 +218,7 @@ class ResultsWriter:
         run = self.file.create_group("run")
         run.attrs.update(
             {
-                "date": datetime.now(timezone.utc).isoformat(timespec="seconds"),
+                "date": datetime.now(UTC).isoformat(timespec="seconds"),
                 "host": socket.gethostname(),
                 "python": platform.python_version(),
                 "resumed": False,

@@ -93,10 +93,9 @@ def _streams(file: ScenarioFile) -> Iterator[Found]:
                 yield (*key, "offset"), "lies off the deck", f"within the width: -{half:g} to {half:g} m"
 
 
-def _mean_at(
-    file: ScenarioFile, stream: StreamTable, key: tuple[str | int, ...], modes: list[str]
-) -> Iterator[Found]:
-    assert stream.pace is not None and stream.pace.mean_at is not None
+def _mean_at(file: ScenarioFile, stream: StreamTable, key: tuple[str | int, ...], modes: list[str]) -> Iterator[Found]:
+    assert stream.pace is not None
+    assert stream.pace.mean_at is not None
     name = stream.pace.mean_at
     if name not in modes:
         yield key, f"no mode is called {name!r}", _choice(name, modes)

@@ -93,8 +93,6 @@ def _spread(value: Any) -> Any:
     return value if isinstance(value, dict | Random) else {"distribution": "fixed", "mean": value}
 
 
-
-
 class RandomPace(Random):
     """Step frequency of a person [Hz]."""
 

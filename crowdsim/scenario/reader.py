@@ -76,9 +76,7 @@ def parse_scenario(text: str, source: str = "scenario") -> Scenario:
     except ValidationError as error:
         problems = [_problem(e, raw, lines) for e in error.errors(include_url=False)]
         raise InputError(source, list(dict.fromkeys(problems))) from None
-    found = [
-        Problem(key_text(p), what, allowed, line_of(lines, p)) for p, what, allowed in cross_checks(file)
-    ]
+    found = [Problem(key_text(p), what, allowed, line_of(lines, p)) for p, what, allowed in cross_checks(file)]
     if found:
         raise InputError(source, found)
     return Scenario(source, text, file, tuple(dict.fromkeys(notes)))

@@ -131,9 +131,7 @@ class Load(Table):
             if self.scatter is not None or self.contact_ratio is not None:
                 raise custom("scatter or contact_ratio beside harmonics", "they belong to a published set")
             if self.phases is not None and len(self.phases) != len(self.harmonics):
-                raise custom(
-                    f"{len(self.phases)} phases for {len(self.harmonics)} harmonics", "one phase a harmonic"
-                )
+                raise custom(f"{len(self.phases)} phases for {len(self.harmonics)} harmonics", "one phase a harmonic")
             if not any(self.harmonics):
                 raise custom("every harmonic is 0", "at least one above 0")
         return self
@@ -208,8 +206,8 @@ class ScenarioFile(Table):
     deck: DeckTable
     mode: list[ModeTable] = Field(min_length=1)
     stream: list[StreamTable] = Field(min_length=1)
-    case: list[CaseTable] = []
-    point: list[PointTable] = []
+    case: list[CaseTable] = Field(default_factory=list)
+    point: list[PointTable] = Field(default_factory=list)
     run: RunTable = RunTable()  # type: ignore[call-arg]
     comfort: ComfortTable = ComfortTable()  # type: ignore[call-arg]
 

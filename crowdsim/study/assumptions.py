@@ -32,14 +32,18 @@ def assumptions(scenario: Scenario, case: Case) -> list[str]:
         said.append(f"{name}: phase {phases}{each}; walking line e {walkers.offset.text('m')}")
         if stream.outside > 0.0005:
             low, high = stream.load.pace_range
-            said.append(f"{name}: {100 * stream.outside:.2g} % of paces outside {low:g} to {high:g} Hz, held at the limit")
+            said.append(
+                f"{name}: {100 * stream.outside:.2g} % of paces outside {low:g} to {high:g} Hz, held at the limit"
+            )
     if case.people == "mass":
         changed = [
-            f"{m.name} +{case.added_mass[m.name]:.4g} kg, {case.bare.mode(m.name).frequency:.4g} to {m.frequency:.4g} Hz"
-            for m in case.model.modes
+            f"{m.name} +{case.added_mass[m.name]:.4g} kg, {bare.frequency:.4g} to {m.frequency:.4g} Hz"
+            for bare, m in zip(case.bare.modes, case.model.modes, strict=True)
         ]
         said.append(
-            "people add their mass, spread evenly along the deck: " + "; ".join(changed) + "; damping ratios and shapes kept"
+            "people add their mass, spread evenly along the deck: "
+            + "; ".join(changed)
+            + "; damping ratios and shapes kept"
         )
     else:
         said.append("the people's effect on the modes is left out")

@@ -94,7 +94,7 @@ def run_realisation(
     control: Control | None = None,
     block: int = realisation.BLOCK,
 ) -> Row | None:
-    """Realisation `number` of `case`; None where `control` stopped it. Raises NotFinite."""
+    """Realisation `number` of `case`; None where `control` stopped it. Raises NotFiniteError."""
     walks = joined([p for _, p in draw(case, number)])
     response = realisation.run(
         walks, case.deck, case.coefficients, case.recorder, case.choice.time_step,

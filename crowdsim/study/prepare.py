@@ -90,7 +90,8 @@ def modal_model(scenario: Scenario) -> ModalModel:
             return None
         if shape.half_waves is not None:
             return HalfWaves(shape.half_waves, length, shape.amplitude)
-        assert shape.s is not None and shape.value is not None
+        assert shape.s is not None
+        assert shape.value is not None
         return Table(tuple(shape.s), tuple(shape.value), shape.interpolation)
 
     return ModalModel(
@@ -184,7 +185,8 @@ def _stream(table: StreamTable, model: ModalModel, duration: float) -> Stream:
     weight = take("weight", population.weight)
     length = take("step_length", None if table.speed is not None else population.step_length)
     speed = take("speed", None if table.step_length is not None else population.speed)
-    assert pace is not None and weight is not None
+    assert pace is not None
+    assert weight is not None
     used = [k for k in ("pace", "weight") if getattr(table, k) is None]
     if table.step_length is None and table.speed is None:
         used.append("step length" if speed is None else "speed")
@@ -281,7 +283,9 @@ def _people_mass(bare: ModalModel, mode: Mode, streams: tuple[Stream, ...]) -> f
 
 def _warm_up(model: ModalModel, driven: tuple[Mode, ...], streams: tuple[Stream, ...]) -> float:
     slowest = max(
-        0.0 if isinstance(s.walkers.arrivals, ConstantNumber) else model.length / s.walkers.speed_quantile(SLOWEST_SHARE)
+        0.0
+        if isinstance(s.walkers.arrivals, ConstantNumber)
+        else model.length / s.walkers.speed_quantile(SLOWEST_SHARE)
         for s in streams
     )
     return slowest + 3.0 * max(m.time_constant for m in driven)
@@ -291,15 +295,13 @@ def _step(
     scenario: Scenario, model: ModalModel, driven: tuple[Mode, ...], streams: tuple[Stream, ...]
 ) -> tuple[step.StepChoice, Deck]:
     run = scenario.file.run
-    top = max(
-        _top_harmonic(s.load) * float(s.walkers.pace.quantile(FASTEST_SHARE)) for s in streams
-    )
+    top = max(_top_harmonic(s.load) * float(s.walkers.pace.quantile(FASTEST_SHARE)) for s in streams)
     speed = max(1.0 / s.inverse_speed for s in streams)
     n = round(1.0 / run.time_step) if run.time_step else None
     per_second = n or step.steps_per_second(max(m.frequency for m in driven), top)
     before = table_cells(model.length, 4.0 / per_second)
     cell = model.length / CELLS
-    s = (np.arange(CELLS + 2 * before + 2) - before) * cell
+    s: Floats = (np.arange(CELLS + 2 * before + 2, dtype=np.float64) - before) * cell
     zero = np.zeros(s.size)
     vertical = np.stack([m.vertical(s) if m.vertical else zero for m in driven], axis=1)
     twist = None
@@ -332,9 +334,7 @@ def _stations(model: ModalModel, points: tuple[Point, ...]) -> tuple[Floats, tup
     s = np.array([i * model.length / STATIONS for i in range(STATIONS + 1)] + [p.s for p in points])
     s = np.unique(np.round(s, 9))
     s = s[np.concatenate([[True], np.diff(s) > 1e-6 * model.length])]
-    return s, tuple(
-        Point("", float(x), e, direction) for direction in model.directions for e in model.edges for x in s
-    )
+    return s, tuple(Point("", float(x), e, direction) for direction in model.directions for e in model.edges for x in s)
 
 
 def _ordinates(driven: tuple[Mode, ...], points: tuple[Point, ...]) -> Floats:

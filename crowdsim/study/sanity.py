@@ -69,7 +69,7 @@ def _mode(model: ModalModel, mode: Mode) -> list[Finding]:
     if mode.damping > DAMPING_LIKELY:
         warn(
             f"damping {100 * mode.damping:.3g} % of critical; footbridges without dampers have 0.2 to 2 %, and "
-            f"above {100 * DAMPING_LIKELY:g} % a percentage may stand for a fraction: 0.5 % is 0.005 or \"0.5 %\""
+            f'above {100 * DAMPING_LIKELY:g} % a percentage may stand for a fraction: 0.5 % is 0.005 or "0.5 %"'
         )
     top = max((abs(model.largest(mode, d)[2]) for d in mode.directions), default=0.0)
     if top > 0.0:
@@ -100,7 +100,7 @@ def _mode(model: ModalModel, mode: Mode) -> list[Finding]:
         if isinstance(shape, Table) and shape.used == "spline" and shape.excursion() > EXCURSION:
             warn(
                 f"the spline through the {direction} table leaves the range of its values by "
-                f"{100 * shape.excursion():.2g} % of the largest; give more points, or interpolation = \"monotone\""
+                f'{100 * shape.excursion():.2g} % of the largest; give more points, or interpolation = "monotone"'
             )
     if not mode.driven:
         warn(
@@ -179,7 +179,7 @@ def _case(scenario: Scenario, case: Case) -> list[Finding]:
     if density > EFFECT_OF_PEOPLE and case.people == "none":
         warn(
             f"case {case.name}",
-            f"{density:.2g} persons/m2 and people = \"none\": their mass (and the damping that walking bodies add) is "
+            f'{density:.2g} persons/m2 and people = "none": their mass (and the damping that walking bodies add) is '
             'left out; people = "mass" adds the mass',
         )
     if case.duration < case.window - 1e-9:

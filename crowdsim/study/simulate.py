@@ -12,8 +12,8 @@ from typing import Any
 import numpy as np
 
 from crowdsim.dynamics.kernels import CHUNK
-from crowdsim.dynamics.realisation import NotFinite
-from crowdsim.errors import InputError, Interrupted, Problem, RunError
+from crowdsim.dynamics.realisation import NotFiniteError
+from crowdsim.errors import InputError, InterruptedRunError, Problem, RunError
 from crowdsim.results.reader import Results, open_results
 from crowdsim.results.writer import CaseHead, CaseWriter, ResultsWriter
 from crowdsim.scenario.reader import Scenario
@@ -121,7 +121,7 @@ def simulate_to(
     ------
     InputError : a finding that stops the run
     ResultsError : the file is there already, or cannot be written
-    Interrupted : the user stopped it; the rows finished so far are in the file
+    InterruptedRunError : the user stopped it; the rows finished so far are in the file
     RunError : a realisation whose motion is not finite
     """
     refuse_errors(plan)
@@ -146,7 +146,7 @@ def simulate_to(
                 left = len(plan.cases) - number - 1
                 rest = f"; {left} case{'s' if left > 1 else ''} not begun" if left else ""
                 kept = "" if finished else "; no file was made"
-                raise Interrupted(f"stopped: {of}{where}{rest}{kept}")
+                raise InterruptedRunError(f"stopped: {of}{where}{rest}{kept}")
         results.finish(_facts(begun, workers, plan, complete=True))
 
 
@@ -179,7 +179,7 @@ def _run_case(case: Case, plan: Plan, writer: CaseWriter, workers: int, progress
     except KeyboardInterrupt:
         halt.set()
         complete = False
-    except NotFinite as error:
+    except NotFiniteError as error:
         raise RunError(f"case {case.name!r}: {error}; check frequencies, masses and the time step") from None
     writer.flush()
     if writer.count:

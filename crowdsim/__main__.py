@@ -1,0 +1,5 @@
+"""`python -m crowdsim`."""
+
+from crowdsim.cli import main
+
+main()

@@ -1,0 +1,125 @@
+"""The command line. Bodies of a few lines; whatever is heavy is imported inside them."""
+
+from __future__ import annotations
+
+import sys
+from pathlib import Path
+from typing import Annotated, NoReturn
+
+import typer
+
+app = typer.Typer(
+    name="crowdsim",
+    no_args_is_help=True,
+    add_completion=False,
+    pretty_exceptions_enable=False,
+    rich_markup_mode=None,
+    context_settings={"help_option_names": ["-h", "--help"]},
+    help="Will people find a footbridge too lively, and how sure is that? Random walkers and joggers, simulated.",
+    epilog="A comfort assessment is no safety check of the structure: the governing code, the owner's criteria "
+    "and a licensed engineer decide.",
+)
+
+ScenarioFile = Annotated[Path, typer.Argument(help="Scenario file (TOML).", metavar="SCENARIO")]
+CaseName = Annotated[str | None, typer.Option("--case", help="Only the case of this name.", metavar="NAME")]
+Count = Annotated[
+    int | None, typer.Option("--realisations", min=1, max=10_000_000, help="Default: the scenario's.", metavar="N")
+]
+Seed = Annotated[int | None, typer.Option("--seed", min=0, help="Default: the scenario's.", metavar="S")]
+Workers = Annotated[
+    int | None, typer.Option("--workers", min=1, max=1024, help="Threads; changes no number.", metavar="W")
+]
+Json = Annotated[bool, typer.Option("--json", help="Print the summary for programs.")]
+Quiet = Annotated[bool, typer.Option("--quiet", "-q", help="Print nothing but errors.")]
+Verbose = Annotated[bool, typer.Option("--verbose", "-v", help="Say more.")]
+
+
+@app.command()
+def simulate(
+    scenario: ScenarioFile,
+    out: Annotated[Path, typer.Option("--out", "-o", help="Results file to write (HDF5).", metavar="RUN.h5")],
+    case: CaseName = None,
+    realisations: Count = None,
+    seed: Seed = None,
+    workers: Workers = None,
+    force: Annotated[bool, typer.Option("--force", help="Overwrite the results file.")] = False,
+    json: Json = False,
+    quiet: Quiet = False,
+    verbose: Verbose = False,
+) -> None:
+    """Simulate every case of a scenario and write the results file."""
+    from crowdsim.console import Console, RunProgress
+    from crowdsim.results.summary import summarise
+    from crowdsim.scenario.reader import read_scenario
+    from crowdsim.study.simulate import plan, simulate_to
+
+    console = Console(quiet=quiet, verbose=verbose, json=json)
+    prepared = plan(read_scenario(scenario), case=case, realisations=realisations, seed=seed)
+    with RunProgress(console) as progress:
+        simulate_to(prepared, out, workers=workers, progress=progress, force=force)
+    console.summary(summarise(out, prepared.scenario.title), prepared.scenario.notes)
+
+
+@app.command()
+def check(
+    scenario: ScenarioFile,
+    case: CaseName = None,
+    realisations: Count = None,
+    json: Json = False,
+    verbose: Verbose = False,
+) -> None:
+    """Read a scenario, show it as understood, say what is doubtful. Changes nothing."""
+    from crowdsim.console import Console
+    from crowdsim.scenario.reader import read_scenario
+    from crowdsim.study.simulate import plan, refuse_errors
+
+    prepared = plan(read_scenario(scenario), case=case, realisations=realisations)
+    Console(verbose=verbose, json=json).check(prepared)
+    refuse_errors(prepared)
+
+
+@app.command()
+def schema() -> None:
+    """Print the JSON Schema of a scenario file, for editors."""
+    import json
+
+    from crowdsim.scenario.schema import json_schema
+
+    typer.echo(json.dumps(json_schema(), indent=2))
+
+
+def _version(value: bool) -> None:
+    if value:
+        import crowdsim
+
+        typer.echo(f"crowdsim {crowdsim.__version__}")
+        raise typer.Exit
+
+
+@app.callback()
+def _options(
+    version: Annotated[
+        bool, typer.Option("--version", callback=_version, is_eager=True, help="Print the version.")
+    ] = False,
+) -> None:
+    pass
+
+
+def main() -> NoReturn:
+    """Runs the command line; errors raised on purpose become one message and their exit status."""
+    from crowdsim.errors import EXIT_OTHER, CrowdsimError
+
+    try:
+        app()
+    except CrowdsimError as error:
+        typer.echo(str(error), err=True)
+        sys.exit(error.exit_status)
+    except KeyboardInterrupt:
+        typer.echo("stopped; nothing was written", err=True)
+        sys.exit(EXIT_OTHER)
+    except BrokenPipeError:
+        sys.exit(EXIT_OTHER)
+    except OSError as error:
+        typer.echo(f"{error.filename or 'crowdsim'}: {error.strerror or error}", err=True)
+        sys.exit(EXIT_OTHER)
+    sys.exit(0)
