@@ -57,7 +57,7 @@ def simulate(
     prepared = plan(read_scenario(scenario), case=case, realisations=realisations, seed=seed)
     with RunProgress(console) as progress:
         simulate_to(prepared, out, workers=workers, progress=progress, force=force)
-    console.summary(summarise(out, prepared.scenario.title), prepared.scenario.notes)
+    console.summary(summarise(out, prepared.scenario.title))
 
 
 @app.command()

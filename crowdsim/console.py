@@ -93,7 +93,7 @@ class Console:
     def _json(self, value: Any) -> None:
         self.out.file.write(json_module.dumps(value, indent=2, allow_nan=False) + "\n")
 
-    def summary(self, summary: Summary, notes: tuple[str, ...] = ()) -> None:
+    def summary(self, summary: Summary) -> None:
         """The summary of a run."""
         if self.json:
             self._json(summary.as_dict())
@@ -104,7 +104,6 @@ class Console:
         for case in summary.cases:
             self._case(case)
         self._list("Findings", summary.findings)
-        self._list("Taken on reading", notes)
         self.out.print()
         self.out.print(textwrap.fill(CAUTION, self.out.width))
         self.out.print(f"Results: {summary.file} (seed {summary.seed}, crowdsim {summary.version})", soft_wrap=True)
@@ -180,7 +179,6 @@ class Console:
         for case in plan.cases:
             self._check_case(plan, case)
         self._list("Findings", [f"{f.level}: {f.line()}" for f in plan.findings])
-        self._list("Taken on reading", plan.scenario.notes)
         if not plan.findings:
             self.out.print("No findings.")
 

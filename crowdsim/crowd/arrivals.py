@@ -16,33 +16,12 @@ class PoissonArrivals:
 
     rate: float
 
-    def draw(self, generator: np.random.Generator, end: float) -> Floats:
-        """Times in [0, end). A longer `end` only adds to them."""
-        if self.rate <= 0.0:
-            return np.zeros(0)
-        mean = self.rate * end
-        gaps: list[Floats] = []
-        total = 0.0
-        size = int(mean + 6.0 * mean**0.5) + 16
-        while total < end:
-            gap = generator.exponential(1.0 / self.rate, size)
-            gaps.append(gap)
-            total += float(np.sum(gap))
-            size = 64
-        times = np.cumsum(np.concatenate(gaps))
-        return times[times < end]
-
 
 @dataclass(frozen=True)
 class GivenArrivals:
     """The given times [s] from time 0, in order."""
 
     times: tuple[float, ...]
-
-    def draw(self, generator: np.random.Generator, end: float) -> Floats:
-        """The times before `end`."""
-        times = np.array(self.times, dtype=np.float64)
-        return times[times < end]
 
 
 @dataclass(frozen=True)
@@ -53,3 +32,27 @@ class ConstantNumber:
 
 
 Arrivals = PoissonArrivals | GivenArrivals | ConstantNumber
+
+
+class PoissonTimes:
+    """Arrival times one after the other: two `take`s give what one gives."""
+
+    def __init__(self, rate: float, generator: np.random.Generator):
+        self._rate, self._generator = rate, generator
+        self._left = np.zeros(0)
+        self._last = 0.0
+
+    def take(self, until: float) -> Floats:
+        """The next times, all below `until`."""
+        kept = [self._left]
+        while self._last < until:
+            size = int(self._rate * (until - self._last) * 1.05) + 16
+            # summed in order from the time before, so that the pieces do not matter
+            gaps = self._generator.exponential(1.0 / self._rate, size)
+            gaps[0] += self._last
+            kept.append(np.cumsum(gaps))
+            self._last = float(kept[-1][-1])
+        times = np.concatenate(kept)
+        count = int(np.searchsorted(times, until, side="left"))
+        self._left = times[count:]
+        return times[:count]

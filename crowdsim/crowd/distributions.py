@@ -5,15 +5,20 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass
 from functools import cached_property
+from statistics import NormalDist
 from typing import Literal
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.special import ndtr, ndtri
 
 Floats = NDArray[np.float64]
 Kind = Literal["fixed", "normal", "lognormal", "uniform"]
 LEAST_PROBABILITY = 0.01
+_STANDARD = NormalDist()  # of the standard library: scipy.special would cost a third of the start-up
+
+
+def _normal_below(z: float) -> float:
+    return 0.5 * math.erfc(-z / math.sqrt(2.0))
 
 
 @dataclass(frozen=True)
@@ -63,20 +68,21 @@ class Distribution:
         variance = math.log1p((self.sd / self.mean) ** 2)
         return math.log(self.mean) - 0.5 * variance, math.sqrt(variance)
 
-    def _cumulative(self, x: float) -> float:
+    def cumulative(self, x: float) -> float:
+        """Untruncated probability below x of a normal or lognormal quantity."""
         if self.kind == "normal":
-            return float(ndtr((x - self.mean) / self.sd))
+            return _normal_below((x - self.mean) / self.sd)
         if x <= 0.0:
             return 0.0
         m, s = self.log_parameters
-        return float(ndtr((math.log(x) - m) / s))
+        return _normal_below((math.log(x) - m) / s)
 
     @cached_property
     def probability(self) -> float:
         """Share of the untruncated probability within [minimum, maximum]."""
         if self.kind in ("fixed", "uniform"):
             return 1.0
-        return self._cumulative(self.maximum) - self._cumulative(self.minimum)
+        return self.cumulative(self.maximum) - self.cumulative(self.minimum)
 
     def quantile(self, p: Floats | float) -> Floats:
         """Value below which the share p of the truncated distribution lies."""
@@ -85,8 +91,9 @@ class Distribution:
             return np.full(p.shape, self.mean)
         if self.kind == "uniform":
             return np.asarray(self.minimum + p * (self.maximum - self.minimum))
-        low = self._cumulative(self.minimum)
-        z = ndtri(np.clip(low + p * self.probability, 0.0, 1.0))
+        low = self.cumulative(self.minimum)
+        flat = np.clip(low + p * self.probability, 1e-300, 1.0 - 1e-16).ravel()
+        z = np.array([_STANDARD.inv_cdf(x) for x in flat]).reshape(p.shape)
         if self.kind == "normal":
             x = self.mean + self.sd * z
         else:
@@ -107,6 +114,17 @@ class Distribution:
         p = (edges[:-1, None] + 0.5 * width[:, None] * (x + 1.0)).ravel()
         return self.quantile(p), (0.5 * width[:, None] * w).ravel()
 
+    def share_within(self, low: float, high: float) -> float:
+        """Share of the truncated distribution within [low, high]."""
+        if self.kind == "fixed":
+            return float(low <= self.mean <= high)
+        low, high = max(low, self.minimum), min(high, self.maximum)
+        if low >= high:
+            return 0.0
+        if self.kind == "uniform":
+            return (high - low) / (self.maximum - self.minimum)
+        return (self.cumulative(high) - self.cumulative(low)) / self.probability
+
     def expectation(self, power: float = 1.0) -> float:
         """E[x^power] of the truncated distribution."""
         x, w = self.nodes
@@ -114,22 +132,7 @@ class Distribution:
 
     def draw(self, generator: np.random.Generator, count: int) -> Floats:
         """`count` values. The i-th is the i-th accepted draw, whatever the count."""
-        if self.kind == "fixed":
-            return np.full(count, self.mean)
-        if self.kind == "uniform":
-            return generator.uniform(self.minimum, self.maximum, count)
-        kept: list[Floats] = []
-        missing = count
-        while missing > 0:
-            size = int(missing / self.probability * 1.1) + 8
-            if self.kind == "normal":
-                x = generator.normal(self.mean, self.sd, size)
-            else:
-                x = generator.lognormal(*self.log_parameters, size)
-            x = x[(x >= self.minimum) & (x <= self.maximum)][:missing]
-            kept.append(x)
-            missing -= x.size
-        return np.concatenate(kept) if kept else np.zeros(0)
+        return Draws(self, generator).take(count)
 
     def text(self, unit: str = "") -> str:
         """As a person writes it: `normal, mean 1.87, sd 0.186, 1.3 to 2.6 Hz`."""
@@ -146,6 +149,34 @@ class Distribution:
         elif math.isfinite(self.maximum):
             ends = f", to {self.maximum:.4g}"
         return f"{self.kind}, mean {self.mean:.4g}, sd {self.sd:.4g}{ends}{u}"
+
+
+class Draws:
+    """Values of a distribution one after the other: two `take`s give what one gives."""
+
+    def __init__(self, distribution: Distribution, generator: np.random.Generator):
+        self._of, self._generator = distribution, generator
+        self._left = np.zeros(0)
+
+    def take(self, count: int) -> Floats:
+        """The next `count` values."""
+        of = self._of
+        if of.kind == "fixed":
+            return np.full(count, of.mean)
+        if of.kind == "uniform":
+            return self._generator.uniform(of.minimum, of.maximum, count)
+        kept, size = [self._left], self._left.size
+        while size < count:
+            trial = int((count - size) / of.probability * 1.1) + 8
+            if of.kind == "normal":
+                x = self._generator.normal(of.mean, of.sd, trial)
+            else:
+                x = self._generator.lognormal(*of.log_parameters, trial)
+            kept.append(x[(x >= of.minimum) & (x <= of.maximum)])
+            size += kept[-1].size
+        values = np.concatenate(kept)
+        self._left = values[count:]
+        return values[:count]
 
 
 def fixed(value: float) -> Distribution:

@@ -8,8 +8,8 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from crowdsim.crowd.arrivals import Arrivals, ConstantNumber
-from crowdsim.crowd.distributions import Distribution
+from crowdsim.crowd.arrivals import Arrivals, ConstantNumber, GivenArrivals, PoissonArrivals, PoissonTimes
+from crowdsim.crowd.distributions import Distribution, Draws
 
 Floats = NDArray[np.float64]
 
@@ -101,44 +101,71 @@ def generator(seed: int, realisation: int, stream: str, quantity: str) -> np.ran
     return np.random.Generator(np.random.PCG64(np.random.SeedSequence(seed, spawn_key=key)))
 
 
-def draw_people(walkers: Walkers, length: float, width: float, end: float, seed: int, realisation: int) -> People:
-    """The persons of `walkers` on a deck of `length` and `width` [m] from time 0 to `end` [s]."""
+class PeopleSource:
+    """The persons of one stream in one realisation, in the order of their arrival.
 
-    def random(quantity: str) -> np.random.Generator:
-        return generator(seed, realisation, walkers.name, quantity)
+    Two `take`s give the persons that one gives: memory does not grow with the time simulated.
+    """
 
-    arrivals = walkers.arrivals
-    if isinstance(arrivals, ConstantNumber):
-        count = arrivals.count
-        enter = np.zeros(count)
-        forward = np.arange(count) < round(walkers.forward_share * count)
-        place = random("place").uniform(0.0, length, count)
-    else:
-        enter = arrivals.draw(random("arrival"), end)
-        count = enter.size
-        if walkers.forward_share >= 1.0:
-            forward = np.ones(count, dtype=bool)
+    def __init__(self, walkers: Walkers, length: float, seed: int, realisation: int):
+        def random(quantity: str) -> np.random.Generator:
+            return generator(seed, realisation, walkers.name, quantity)
+
+        self.walkers, self._length = walkers, length
+        self._random = random
+        self._direction = random("direction")
+        second = walkers.speed if walkers.speed is not None else walkers.step_length
+        phase = walkers.phase or Distribution("uniform", minimum=0.0, maximum=2.0 * np.pi)
+        assert second is not None
+        named = {"pace": walkers.pace, "length": second, "weight": walkers.weight, "offset": walkers.offset,
+                 "phase": phase}  # fmt: skip
+        self._draws = {name: Draws(of, random(name)) for name, of in named.items()}
+        self._poisson = (
+            PoissonTimes(walkers.arrivals.rate, random("arrival"))
+            if isinstance(walkers.arrivals, PoissonArrivals)
+            else None
+        )
+        self._until = -np.inf
+
+    def _arrivals(self, until: float) -> tuple[Floats, Floats, Floats]:
+        """Time, place and direction of those who come before `until`."""
+        walkers = self.walkers
+        if isinstance(walkers.arrivals, ConstantNumber):
+            count = walkers.arrivals.count if self._until < 0.0 else 0
+            forward = np.arange(count) < round(walkers.forward_share * count)
+            place = self._random("place").uniform(0.0, self._length, count)
+            return np.zeros(count), place, np.where(forward, 1.0, -1.0)
+        if self._poisson is not None:
+            enter = self._poisson.take(until)
         else:
-            forward = random("direction").uniform(size=count) < walkers.forward_share
-        place = np.where(forward, 0.0, length)
-    pace = walkers.pace.draw(random("pace"), count)
-    if walkers.speed is not None:
-        speed = walkers.speed.draw(random("length"), count)
-    else:
-        assert walkers.step_length is not None
-        speed = pace * walkers.step_length.draw(random("length"), count)
-    if walkers.phase is None:
-        phase = random("phase").uniform(0.0, 2.0 * np.pi, count)
-    else:
-        phase = walkers.phase.draw(random("phase"), count)
-    return People(
-        enter=enter,
-        place=place,
-        direction=np.where(forward, 1.0, -1.0),
-        pace=pace,
-        speed=speed,
-        weight=walkers.weight.draw(random("weight"), count),
-        offset=walkers.offset.draw(random("offset"), count),
-        phase=phase,
-        returns=isinstance(arrivals, ConstantNumber),
-    )
+            assert isinstance(walkers.arrivals, GivenArrivals)
+            times = np.array(walkers.arrivals.times, dtype=np.float64)
+            enter = times[(times >= self._until) & (times < until)]
+        if walkers.forward_share >= 1.0:
+            forward = np.ones(enter.size, dtype=bool)
+        else:
+            forward = self._direction.uniform(size=enter.size) < walkers.forward_share
+        return enter, np.where(forward, 0.0, self._length), np.where(forward, 1.0, -1.0)
+
+    def take(self, until: float) -> People:
+        """The persons who come from where the last `take` ended to `until` [s]."""
+        enter, place, direction = self._arrivals(until)
+        self._until = until
+        drawn = {name: draws.take(enter.size) for name, draws in self._draws.items()}
+        speed = drawn["length"] if self.walkers.speed is not None else drawn["pace"] * drawn["length"]
+        return People(
+            enter=enter,
+            place=place,
+            direction=direction,
+            pace=drawn["pace"],
+            speed=speed,
+            weight=drawn["weight"],
+            offset=drawn["offset"],
+            phase=drawn["phase"],
+            returns=isinstance(self.walkers.arrivals, ConstantNumber),
+        )
+
+
+def draw_people(walkers: Walkers, length: float, end: float, seed: int, realisation: int) -> People:
+    """The persons of `walkers` on a deck of `length` [m] from time 0 to `end` [s]."""
+    return PeopleSource(walkers, length, seed, realisation).take(end)

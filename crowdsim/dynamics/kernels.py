@@ -413,11 +413,6 @@ def _lanes_4_4(force, table, at, work, first, last, column):
 
 
 @_compiled()
-def _lanes_2_8(force, table, at, work, first, last, column):
-    _lanes(force, table, at, work, first, last, column, 2, 8)
-
-
-@_compiled()
 def _lanes_4_8(force, table, at, work, first, last, column):
     _lanes(force, table, at, work, first, last, column, 4, 8)
 
@@ -425,10 +420,7 @@ def _lanes_4_8(force, table, at, work, first, last, column):
 @_compiled(inline="always")
 def _chunks(force, table, at, work, first, last, column, two, many):
     if many:
-        if two:
-            _lanes_2_8(force, table, at, work, first, last, column)
-        else:
-            _lanes_4_8(force, table, at, work, first, last, column)
+        _lanes_4_8(force, table, at, work, first, last, column)
     elif two:
         _lanes_2_4(force, table, at, work, first, last, column)
     else:
@@ -438,7 +430,7 @@ def _chunks(force, table, at, work, first, last, column, two, many):
 @_compiled()
 def _part_chunk(force, table, at, work, q, start, stop, column, row, two, many):
     """Adds samples start..stop (counted from the run) of chunk q, by way of the scratch chunk."""
-    rows = 2 if two else 4
+    rows = 2 if two and not many else 4
     scratch = row + _U(SCRATCH)
     for j in range(rows):
         for l in range(CHUNK):
@@ -659,16 +651,20 @@ def _largest(x, first, count):
 
 
 @_compiled()
-def point_block(y, keep, begin, end, first, window, segment, sums, lanes, running, peaks, best):
+def point_block(y, keep, begin, end, first, final, window, segment, sums, lanes, running, peaks, best):
     """Peak, sum of squares and largest running sum of one point over steps begin..end of a block.
 
     y: acceleration, with `keep` > window steps of the block before in front; first: the first
     observed step, counted like begin. window: steps of the running RMS; segment: steps of the
     comfort window. sums: [SUMS] squares by step modulo SUMS; lanes: [2 SUMS] scratch; running:
     sum over the last window, largest (ends counted half); peaks: a value a segment, the rest of
-    the record last; best: peak, its step from the first observed one.
+    the record last; best: peak, its step from the first observed one, half the squares of the
+    first step and of `final`, the last one.
     """
     last = peaks.size - 1
+    for i in (first, final):
+        if begin <= i < end:
+            best[2] += 0.5 * y[keep + i] * y[keep + i]
     part = begin
     while part < end:
         stop = min((part // WINDOW_PART + 1) * WINDOW_PART, end)
@@ -805,11 +801,14 @@ def _station(y, shape, motion, part, stop, first, best):
 @_compiled()
 def realisation(
     persons, numbers, loads, many, ordinates, twist, modes, step, points, stations,
-    total, warm, window, segment, block, weights, history, history_start,
+    first_sample, last_sample, total, warm, window, segment, block, weights, history, history_start,
     force, table, work, rows, between, motion, state, y, scratch, tops,
     peaks, squares, running, best, envelope, stop, progress,
 ):  # fmt: skip
-    """One realisation in blocks: force, motion, measures. Gives DONE, STOPPED or NOT_FINITE."""
+    """Samples first..last of one realisation in blocks: force, motion, measures.
+
+    All that must outlast the call is in the arrays. Gives DONE, STOPPED or NOT_FINITE.
+    """
     factor = 1 + weights.shape[0]
     steps = factor * block
     keep = y.shape[1] - steps
@@ -818,8 +817,8 @@ def realisation(
     lanes = scratch[:64]
     low = np.int64(0)  # typed: a bare nought would compile the callees twice
     high = np.int64(0)
-    n = np.int64(0)
-    while factor * (n - LAG) < total:
+    n = np.int64(first_sample)
+    while n < last_sample and factor * (n - LAG) < total:
         if stop[0] != 0:
             return STOPPED
         while high < count and persons[high, 0] < n + block:
@@ -842,8 +841,8 @@ def realisation(
                 history[zero + i - history_start, q] = row[keep + i]
             if begin < end:
                 point_block(
-                    row, keep, begin, end, warm - zero, window, segment, squares[q], lanes, running[q],
-                    peaks[q], best[q]
+                    row, keep, begin, end, warm - zero, total - 1 - zero, window, segment, squares[q], lanes,
+                    running[q], peaks[q], best[q]
                 )  # fmt: skip
         if begin < end:
             envelope_block(motion, stations, envelope, begin, end, warm - zero, scratch[64:], tops)

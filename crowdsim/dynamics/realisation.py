@@ -152,14 +152,16 @@ def deck_table(vertical: Floats, twist: Floats | None, length: float, before: in
     return Deck(pack(vertical), np.zeros(0) if twist is None else pack(twist), modes, length / CELLS, before)
 
 
-def _rows(passages: Passages, deck: Deck, sample: float, samples: int) -> tuple[NDArray[np.int64], Floats, Floats]:
-    first = np.ceil(passages.enter / sample - 1e-9).astype(np.int64)
-    end = np.floor(passages.leave / sample + 1e-9).astype(np.int64) + 1
-    keep = (first < end) & (first < samples)
-    order = np.flatnonzero(keep)
-    order = order[np.argsort(first[order], kind="stable")]
-    first, end = first[order], np.minimum(end[order], samples)
-    late = first * sample - passages.enter[order]
+def _rows(
+    passages: Passages, deck: Deck, sample: float, begin: int, end: int
+) -> tuple[NDArray[np.int64], Floats, Floats]:
+    """Kernel tables of the passages that touch samples begin..end, in the order of their first sample."""
+    enter = np.ceil(passages.enter / sample - 1e-9).astype(np.int64)
+    leave = np.floor(passages.leave / sample + 1e-9).astype(np.int64) + 1
+    order = np.flatnonzero((enter < leave) & (enter < end) & (leave > begin))
+    order = order[np.argsort(enter[order], kind="stable")]
+    enter, leave = enter[order], leave[order]
+    late = enter * sample - passages.enter[order]
     pace = passages.pace[order]
     numbers = np.empty((order.size, 5))
     numbers[:, 0] = np.fmod(passages.turns[order] + pace * late, 1.0)
@@ -170,17 +172,124 @@ def _rows(passages: Passages, deck: Deck, sample: float, samples: int) -> tuple[
     loads = np.zeros((order.size, 2 * HARMONICS))
     loads[:, : passages.cosine.shape[1]] = passages.cosine[order]
     loads[:, HARMONICS : HARMONICS + passages.sine.shape[1]] = passages.sine[order]
-    return np.ascontiguousarray(np.stack([first, end], axis=1)), numbers, loads
+    return np.ascontiguousarray(np.stack([enter, leave], axis=1)), numbers, loads
 
 
-def _slots(rows: NDArray[np.int64], samples: int, block: int) -> int:
+def _slots(rows: NDArray[np.int64], begin: int, end: int, block: int) -> int:
+    """A power of two that holds everybody between the first not yet gone and the last to come in a block."""
     if rows.shape[0] == 0:
         return 1
-    starts = np.arange(0, samples, block)
+    starts = np.arange(begin, end, block)
     high = np.searchsorted(rows[:, 0], starts + block, side="left")
     low = np.searchsorted(np.maximum.accumulate(rows[:, 1]), starts, side="right")
     most = int(np.max(high - low, initial=1))
     return 1 << (max(most, 1) - 1).bit_length()
+
+
+class Realisation:
+    """A realisation on its way: `advance` as far as persons are known, then `response`.
+
+    Parameters
+    ----------
+    step : [mode, 11] from `newmark.step_coefficients`, driven modes only
+    history : steps [from, to) whose acceleration is kept
+    factor : steps in a sample of the force (1, 2 or 4), see `step.choose`
+    block : samples worked on at a time, a multiple of 512; changes no bit
+
+    Raises ValueError for arrays that do not fit each other.
+    """
+
+    def __init__(
+        self,
+        deck: Deck,
+        step: Floats,
+        recorder: Recorder,
+        time_step: float,
+        *,
+        history: tuple[int, int] | None = None,
+        control: Control | None = None,
+        factor: int = 4,
+        block: int = BLOCK,
+    ):
+        modes = deck.modes
+        if step.shape != (modes, 11):
+            raise ValueError(f"step: {step.shape}, not {(modes, 11)}")
+        for name in ("points", "stations"):
+            if getattr(recorder, name).shape[1:] != (modes,):
+                raise ValueError(f"{name}: one ordinate for each of the {modes} driven modes")
+        if block % RUN or not 0 < block <= BLOCK_LIMIT:
+            raise ValueError(f"block: a multiple of {RUN} up to {BLOCK_LIMIT}, not {block}")
+        if not 1 <= modes <= kernels.MODES_LIMIT:
+            raise ValueError(f"1 to {kernels.MODES_LIMIT} driven modes, not {modes}")
+        self.deck, self.recorder, self.time_step = deck, recorder, time_step
+        self.factor, self.block = factor, block
+        self.control = control or Control()
+        self.samples = -(-recorder.total // factor) + kernels.LAG
+        self.sample = 0
+        pair = modes + modes % 2
+
+        def padded(values: Floats, axis: int) -> Floats:
+            width = [(0, 0)] * values.ndim
+            width[axis] = (0, pair - modes)
+            return np.ascontiguousarray(np.pad(values, width), dtype=np.float64)
+
+        points = recorder.points.shape[0]
+        begin, stop = history or (0, 0)
+        steps = factor * block
+        self._step, self._points = padded(step, 0), padded(recorder.points, 1)
+        self._stations, self._weights = padded(recorder.stations, 1), between_weights(factor)
+        self._history, self._history_start = np.zeros((max(stop - begin, 0), points)), begin
+        self._force, self._work = aligned(-(-modes // ROWS) * ROWS * STRIDE), aligned(WORK)
+        self._rows, self._between = np.zeros((pair, TAPS + block)), np.zeros((pair, factor - 1, block))
+        self._motion, self._state = np.zeros((pair, CARRY + steps)), np.zeros((pair, 3))
+        self._y = np.zeros((points, recorder.window + 2 + steps))
+        self._scratch, self._tops = aligned(SCRATCH_SIZE), np.zeros((kernels.PARTS + 1, pair))
+        self._peaks, self._squares = np.zeros((points, recorder.segments + 1)), np.zeros((points, SUMS))
+        self._running, self._best = np.zeros((points, 2)), np.zeros((points, 3))
+        self._envelope = np.zeros(recorder.stations.shape[0])
+
+    def advance(self, passages: Passages, until: int) -> bool:
+        """Goes on to sample `until`, a multiple of `BLOCK_LIMIT` or the last.
+
+        passages : all that touch the samples from here to `until`. False where `control` stopped it.
+        Raises ValueError for passages that do not fit, NotFiniteError for a motion that is not finite.
+        """
+        until = min(until, self.samples)
+        if passages.cosine.shape[1] > HARMONICS:
+            raise ValueError(f"at most {HARMONICS} harmonics, not {passages.cosine.shape[1]}")
+        rows, numbers, loads = _rows(passages, self.deck, self.factor * self.time_step, self.sample, until)
+        if numbers.size and np.max(np.abs(numbers[:, 3])) * CHUNK + 1 > self.deck.before:
+            raise ValueError(f"a person faster than {FASTEST} m/s")
+        r = self.recorder
+        status = kernels.realisation(
+            rows, numbers, loads, bool(passages.cosine.shape[1] > 4), self.deck.vertical, self.deck.twist,
+            self.deck.modes, self._step, self._points, self._stations,
+            self.sample, until, r.total, r.warm, r.window, r.segment, self.block, self._weights,
+            self._history, self._history_start,
+            self._force, aligned(_slots(rows, self.sample, until, self.block) * SLOT), self._work,
+            self._rows, self._between, self._motion, self._state, self._y, self._scratch, self._tops,
+            self._peaks, self._squares, self._running, self._best, self._envelope,
+            self.control.stop, self.control.progress,
+        )  # fmt: skip
+        if status == kernels.NOT_FINITE:
+            raise NotFiniteError("the motion is not finite")
+        self.sample = until
+        return bool(status != kernels.STOPPED)
+
+    def response(self) -> Response:
+        """The measures, once the last sample is reached."""
+        if self.sample < self.samples:
+            raise ValueError(f"at sample {self.sample} of {self.samples}")
+        r = self.recorder
+        return Response(
+            peak=self._best[:, 0].copy(),
+            rms=np.sqrt((self._squares.sum(axis=1) - self._best[:, 2]) / (r.total - 1 - r.warm)),
+            running_rms_max=np.sqrt(self._running[:, 1] / r.window),
+            peak_time=(self._best[:, 1] + r.warm) * self.time_step,
+            window_peak=np.ascontiguousarray(self._peaks[:, :-1].T),
+            envelope=self._envelope,
+            history=self._history,
+        )
 
 
 def run(
@@ -195,75 +304,9 @@ def run(
     factor: int = 4,
     block: int = BLOCK,
 ) -> Response | None:
-    """Acceleration measures of one realisation; None where `control` stopped it.
+    """A whole realisation whose passages are all known; None where `control` stopped it.
 
-    Parameters
-    ----------
-    step : [mode, 11] from `newmark.step_coefficients`, driven modes only
-    history : steps [from, to) whose acceleration is kept
-    factor : steps in a sample of the force (1, 2 or 4), see `step.choose`
-    block : samples worked on at a time, a multiple of 512; changes no bit
-
-    Raises
-    ------
-    ValueError : arrays that do not fit each other
-    NotFiniteError : the motion is not finite
+    Parameters and errors as `Realisation`.
     """
-    modes = deck.modes
-    if step.shape != (modes, 11):
-        raise ValueError(f"step: {step.shape}, not {(modes, 11)}")
-    for name in ("points", "stations"):
-        if getattr(recorder, name).shape[1:] != (modes,):
-            raise ValueError(f"{name}: one ordinate for each of the {modes} driven modes")
-    if block % RUN or not 0 < block <= BLOCK_LIMIT:
-        raise ValueError(f"block: a multiple of {RUN} up to {BLOCK_LIMIT}, not {block}")
-    if passages.cosine.shape[1] > HARMONICS:
-        raise ValueError(f"at most {HARMONICS} harmonics, not {passages.cosine.shape[1]}")
-    if not 1 <= modes <= kernels.MODES_LIMIT:
-        raise ValueError(f"1 to {kernels.MODES_LIMIT} driven modes, not {modes}")
-    control = control or Control()
-    weights = between_weights(factor)
-    points = recorder.points.shape[0]
-    samples = -(-recorder.total // factor) + kernels.LAG
-    rows, numbers, loads = _rows(passages, deck, factor * time_step, samples)
-    if numbers.size and np.max(np.abs(numbers[:, 3])) * CHUNK + 1 > deck.before:
-        raise ValueError(f"a person faster than {FASTEST} m/s")
-    pair = modes + modes % 2
-
-    def padded(values: Floats, axis: int) -> Floats:
-        width = [(0, 0)] * values.ndim
-        width[axis] = (0, pair - modes)
-        return np.ascontiguousarray(np.pad(values, width), dtype=np.float64)
-
-    begin, stop = history or (0, 0)
-    kept = np.zeros((max(stop - begin, 0), points))
-    steps = factor * block
-    y = np.zeros((points, recorder.window + 2 + steps))
-    peaks = np.zeros((points, recorder.segments + 1))
-    squares = np.zeros((points, SUMS))
-    running = np.zeros((points, 2))
-    best = np.zeros((points, 2))
-    envelope = np.zeros(recorder.stations.shape[0])
-    motion = np.zeros((pair, CARRY + steps))
-    status = kernels.realisation(
-        rows, numbers, loads, bool(passages.cosine.shape[1] > 4), deck.vertical, deck.twist, modes,
-        padded(step, 0), padded(recorder.points, 1), padded(recorder.stations, 1),
-        recorder.total, recorder.warm, recorder.window, recorder.segment, block, weights, kept, begin,
-        aligned(-(-modes // ROWS) * ROWS * STRIDE), aligned(_slots(rows, samples, block) * SLOT), aligned(WORK),
-        np.zeros((pair, TAPS + block)), np.zeros((pair, factor - 1, block)), motion, np.zeros((pair, 3)),
-        y, aligned(SCRATCH_SIZE), np.zeros((kernels.PARTS + 1, pair)), peaks, squares, running, best, envelope,
-        control.stop, control.progress,
-    )  # fmt: skip
-    if status == kernels.STOPPED:
-        return None
-    if status == kernels.NOT_FINITE:
-        raise NotFiniteError("the motion is not finite")
-    return Response(
-        peak=best[:, 0].copy(),
-        rms=np.sqrt(squares.sum(axis=1) / (recorder.total - 1 - recorder.warm)),
-        running_rms_max=np.sqrt(running[:, 1] / recorder.window),
-        peak_time=(best[:, 1] + recorder.warm) * time_step,
-        window_peak=np.ascontiguousarray(peaks[:, :-1].T),
-        envelope=envelope,
-        history=kept,
-    )
+    whole = Realisation(deck, step, recorder, time_step, history=history, control=control, factor=factor, block=block)
+    return whole.response() if whole.advance(passages, whole.samples) else None

@@ -65,7 +65,7 @@ def young_2001_mean(pace: Floats) -> Floats:
 
 def _young_spread(pace: Floats) -> Floats:
     """Coefficients of variation 0.17, 0.40, 0.40, 0.40 (Young 2001, from memory) times the means."""
-    return young_2001_mean(pace) * np.array([0.17, 0.40, 0.40, 0.40])
+    return np.asarray(young_2001_mean(pace) * np.array([0.17, 0.40, 0.40, 0.40]), dtype=np.float64)
 
 
 def young_2001_design(pace: Floats) -> Floats:

@@ -1,4 +1,4 @@
 """Measures across realisations: percentiles, distribution-free intervals, summaries.
 
-Depends on numpy and scipy.special. Sees no scenario and no file.
+Depends on numpy, and scipy.special on use. Sees no scenario and no file.
 """

@@ -7,7 +7,6 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.special import bdtr
 
 Floats = NDArray[np.float64]
 LEAST_FOR_INTERVAL = 72  # of the 95 % value at 95 % confidence
@@ -28,6 +27,8 @@ def interval_ranks(count: int, share: float, confidence: float = 0.95) -> tuple[
     >>> interval_ranks(100, 0.95), interval_ranks(71, 0.95)
     ((90, 100), None)
     """
+    from scipy.special import bdtr  # here, for it is slow to load and not needed before a run
+
     tail = 0.5 * (1.0 - confidence)
     below = bdtr(np.arange(count, dtype=np.float64), count, share)  # P(B <= k), k = 0 .. n-1
     low = int(np.searchsorted(below, tail, side="right"))  # largest r with P(B <= r - 1) <= tail

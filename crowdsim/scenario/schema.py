@@ -204,8 +204,8 @@ class ScenarioFile(Table):
 
     scenario: Head = Head(title="untitled", note="")
     deck: DeckTable
-    mode: list[ModeTable] = Field(min_length=1)
-    stream: list[StreamTable] = Field(min_length=1)
+    mode: list[ModeTable] = Field(min_length=1, max_length=64)
+    stream: list[StreamTable] = Field(min_length=1, max_length=200)
     case: list[CaseTable] = Field(default_factory=list)
     point: list[PointTable] = Field(default_factory=list)
     run: RunTable = RunTable()  # type: ignore[call-arg]

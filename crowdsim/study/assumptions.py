@@ -49,6 +49,7 @@ def assumptions(scenario: Scenario, case: Case) -> list[str]:
         said.append("the people's effect on the modes is left out")
     said.append("vertical forces only; perfect gait: pace and force of a person do not vary while crossing")
     said.append("people walk independently; nobody slows anyone down or falls into step")
+    said += scenario.notes
     scheme = f"Newmark, {run.integration}" + (", stiffness and damping matched to the step" if run.matched else "")
     said.append(
         f"{scheme}; step 1/{case.choice.per_second} s; peaks within about {100 * case.choice.expected_error:.2g} %"

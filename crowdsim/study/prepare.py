@@ -212,7 +212,7 @@ def _stream(table: StreamTable, model: ModalModel, duration: float) -> Stream:
         walkers=replace(walkers, arrivals=arrivals),
         load=load,
         sources=tuple(sources),
-        outside=_share_outside(pace, load.pace_range),
+        outside=1.0 - pace.share_within(*load.pace_range),
         inverse_speed=inverse,
         persons=persons,
         mean_mass=weight.expectation() / GRAVITY,
@@ -261,14 +261,6 @@ def _load(table: StreamTable, sources: list[str]) -> loads.LoadSet:
     chosen = sets.load_set(table.gait, given.set, scatter=given.scatter, contact_ratio=given.contact_ratio)
     sources.append(f"load: {chosen.name} ({chosen.source}){', factors scattered' if chosen.scatter else ''}")
     return chosen
-
-
-def _share_outside(pace: Distribution, limits: tuple[float, float]) -> float:
-    if pace.kind == "fixed":
-        return float(not limits[0] <= pace.mean <= limits[1])
-    p = np.linspace(0.0, 1.0, 20001)
-    x = pace.quantile(p)
-    return float(np.mean((x < limits[0]) | (x > limits[1])))
 
 
 def _people_mass(bare: ModalModel, mode: Mode, streams: tuple[Stream, ...]) -> float:
