@@ -281,12 +281,15 @@ class Realisation:
         if self.sample < self.samples:
             raise ValueError(f"at sample {self.sample} of {self.samples}")
         r = self.recorder
+        windows, rest = self._peaks[:, :-1].T.copy(), self._peaks[:, -1]
+        if r.segments and (r.total - 1 - r.warm) % r.segment == 0:
+            windows[-1] = np.maximum(windows[-1], rest)  # the last step of all ends the last window
         return Response(
             peak=self._best[:, 0].copy(),
             rms=np.sqrt((self._squares.sum(axis=1) - self._best[:, 2]) / (r.total - 1 - r.warm)),
             running_rms_max=np.sqrt(self._running[:, 1] / r.window),
             peak_time=(self._best[:, 1] + r.warm) * self.time_step,
-            window_peak=np.ascontiguousarray(self._peaks[:, :-1].T),
+            window_peak=windows,
             envelope=self._envelope,
             history=self._history,
         )

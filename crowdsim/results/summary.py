@@ -13,7 +13,7 @@ import numpy as np
 from crowdsim.response.statistics import Distribution1D, describe, percentile_rank
 from crowdsim.results.reader import _strings, open_file
 
-_SLAB = 8_000_000  # numbers of the envelope in memory at a time
+_SLAB = 2_000_000  # numbers of the envelope in memory at a time
 
 
 @dataclass(frozen=True)

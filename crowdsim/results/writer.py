@@ -40,6 +40,7 @@ class CaseHead:
     warm_up: float
     duration: float
     window: float
+    windows: int
     people: str
     persons: float
     points: Sequence[tuple[str, float, float, str]]
@@ -87,7 +88,7 @@ class CaseWriter:
         self.count = 0
         self._rows: list[tuple[Any, ...]] = []
         points = len(head.points)
-        windows = int((head.duration + 1e-9) // head.window)
+        windows = head.windows
         attributes: dict[str, Any] = {
             "name": head.name, "time_step": head.time_step, "warm_up": head.warm_up, "duration": head.duration,
             "window": head.window, "people": head.people, "persons_on_deck": head.persons,
