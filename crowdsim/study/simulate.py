@@ -94,6 +94,7 @@ def head(scenario: Scenario, case: Case) -> CaseHead:
     choice = case.choice
     return CaseHead(
         name=case.name, time_step=choice.time_step, warm_up=case.warm_up, duration=case.duration, window=case.window,
+        windows=case.recorder.segments,
         people=case.people, persons=case.persons,
         points=[(p.name, p.s, p.e, p.direction) for p in case.points],
         directions=case.model.directions, deck_s=case.deck_s, deck_e=case.model.edges,
