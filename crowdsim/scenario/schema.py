@@ -212,12 +212,38 @@ class ScenarioFile(Table):
     comfort: ComfortTable = ComfortTable()  # type: ignore[call-arg]
 
 
+_BOUNDS = {"gt": "exclusiveMinimum", "ge": "minimum", "lt": "exclusiveMaximum", "le": "maximum"}
+
+
 def json_schema() -> dict[str, Any]:
-    """JSON Schema of a scenario file, for editors."""
-    schema = ScenarioFile.model_json_schema(mode="validation")
+    """JSON Schema of a scenario file, for editors that complete and check while one types."""
+    schema = _tidied(ScenarioFile.model_json_schema(mode="validation"))
     return {
         "$schema": "https://json-schema.org/draft/2020-12/schema",
         "title": "crowdsim scenario",
         "description": "A footbridge, its people and what is to be simulated",
         **{k: v for k, v in schema.items() if k not in ("title", "description")},
     }
+
+
+def _tidied(node: Any) -> Any:
+    """Without what TOML cannot say (null), with bounds on the number where a unit string may stand beside it."""
+    if isinstance(node, list):
+        return [_tidied(item) for item in node]
+    if not isinstance(node, dict):
+        return node
+    out = {k: _tidied(v) for k, v in node.items() if not (k == "default" and v is None)}
+    if isinstance(out.get("title"), str):
+        del out["title"]
+    bounds = {_BOUNDS[k]: out.pop(k) for k in tuple(out) if k in _BOUNDS}
+    if "anyOf" in out:
+        choices = [c for c in out["anyOf"] if c != {"type": "null"}]
+        for choice in choices:
+            if choice.get("type") == "number":
+                choice.update(bounds)
+        out["anyOf"] = choices
+        if len(choices) == 1:
+            out = {**choices[0], **{k: v for k, v in out.items() if k != "anyOf"}}
+    else:
+        out.update(bounds)
+    return out
