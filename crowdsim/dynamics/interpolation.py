@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from functools import cache
 
 import numpy as np
 from numpy.typing import NDArray
@@ -25,6 +26,7 @@ def _bessel_i0(x: float) -> float:
     return total
 
 
+@cache
 def between_weights(factor: int) -> Floats:
     """Weights [step between, TAPS] of the samples around a step j/factor of a sample on.
 

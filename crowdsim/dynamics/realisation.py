@@ -229,9 +229,11 @@ class Realisation:
         pair = modes + modes % 2
 
         def padded(values: Floats, axis: int) -> Floats:
-            width = [(0, 0)] * values.ndim
-            width[axis] = (0, pair - modes)
-            return np.ascontiguousarray(np.pad(values, width), dtype=np.float64)
+            shape = list(values.shape)
+            shape[axis] = pair
+            out = np.zeros(shape)
+            out[: values.shape[0], : values.shape[1]] = values
+            return out
 
         points = recorder.points.shape[0]
         begin, stop = history or (0, 0)

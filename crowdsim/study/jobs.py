@@ -98,10 +98,16 @@ def draw(case: Case, number: int) -> list[tuple[People, Passages]]:
 
 def joined(parts: list[Passages]) -> Passages:
     """All walks in one table; missing harmonics are nought."""
+    if len(parts) == 1:
+        return parts[0]
     width = max(p.cosine.shape[1] for p in parts)
 
     def wide(values: Floats) -> Floats:
-        return np.pad(values, ((0, 0), (0, width - values.shape[1])))
+        if values.shape[1] == width:
+            return values
+        out = np.zeros((values.shape[0], width))
+        out[:, : values.shape[1]] = values
+        return out
 
     flat = {
         k: np.concatenate([getattr(p, k) for p in parts])
