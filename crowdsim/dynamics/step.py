@@ -29,7 +29,7 @@ class StepChoice:
     peak_error : of a peak, by the parabola through three samples at the highest mode
     history_error : of the response, relative to a resonant peak, over all modes and harmonics
     ordinate_error : of the ordinates between their table values, relative to the largest
-    sampling_error : of the highest harmonic at the steps between samples
+    sampling_error : largest of any harmonic at the steps between samples
     mode_angle : omega dt of the highest mode [rad]
     """
 
@@ -104,10 +104,10 @@ def choose(
     cell: float,
     mean_speed: float,
     *,
-    jumps: bool,
-    per_second: int | None = None,
+    sharp: bool,
+    per_second: int,
 ) -> StepChoice:
-    """The step (given or chosen), the samples of the force, and the errors they leave.
+    """The samples of the force at a step of 1/per_second, and the errors that both leave.
 
     Parameters
     ----------
@@ -115,17 +115,18 @@ def choose(
     highest_harmonic : of the load [Hz]
     ordinates : [cell, mode] fine table with `before` cells beyond each end, `cell` [m] long
     mean_speed : of the fastest stream [m/s]
-    jumps : an ordinate does not vanish at an end: the force begins with a step, no rule between
-        samples may smooth it, and it is sampled at every step
+    sharp : the force is sampled at every step: an ordinate does not vanish at an end, so that the
+        force begins with a step which no rule between samples may smooth; or nothing resonates,
+        so that the kink of stepping on is not small beside the response
     """
     top = float(np.max(frequency))
-    n = per_second or steps_per_second(top, highest_harmonic)
+    n = per_second
     dt = 1.0 / n
     factor, curve = 1, 0.0
     for factor in (4, 2, 1):
         curve = ordinate_error(ordinates, mean_speed * dt * factor * CHUNK / cell, before)
         fits = 2.0 * math.pi * highest_harmonic * dt * factor <= REACH * 1.0001
-        if factor == 1 or (fits and curve <= ORDINATE_ERROR and not jumps):
+        if factor == 1 or (fits and curve <= ORDINATE_ERROR and not sharp):
             break
     load = np.linspace(0.5, max(highest_harmonic, 1.0), 200)
     history = 0.0
@@ -138,7 +139,7 @@ def choose(
         scale = max(float(np.abs(exact).max()), 1.0)
         history = max(history, float(np.abs(numerical - exact).max()) / scale)
     angle = 2.0 * math.pi * highest_harmonic * dt * factor
-    between = float(between_error(factor, np.array(angle))) if factor > 1 else 0.0
+    between = float(between_error(factor, np.linspace(0.0, angle, 200)).max()) if factor > 1 else 0.0
     return StepChoice(
         n, factor, parabola_error(2.0 * math.pi * top * dt), history, curve, between, 2.0 * math.pi * top * dt
     )

@@ -27,6 +27,7 @@ STATIONS = 96
 SLOWEST_SHARE = 0.001
 FASTEST_SHARE = 0.999
 EDGE = 0.3  # m kept free beside each edge where a mode twists
+FINEST = 500  # steps in a second, when a short deck with many half waves asks for more
 _FLOORS = {"pace": (0.3, 6.0), "step_length": (0.1, 3.0), "speed": (0.1, FASTEST), "weight": (10.0, 10_000.0)}
 
 
@@ -289,26 +290,49 @@ def _step(
     run = scenario.file.run
     top = max(_top_harmonic(s.load) * float(s.walkers.pace.quantile(FASTEST_SHARE)) for s in streams)
     speed = max(1.0 / s.inverse_speed for s in streams)
-    n = round(1.0 / run.time_step) if run.time_step else None
-    per_second = n or step.steps_per_second(max(m.frequency for m in driven), top)
-    before = table_cells(model.length, 4.0 / per_second)
+    scheme = newmark.Newmark.named(run.integration, run.matched)
+    frequency = np.array([m.frequency for m in driven])
+    damping = np.array([m.damping for m in driven])
+    given = round(1.0 / run.time_step) if run.time_step else None
+    kinked = any(isinstance(t, Table) and t.used == "linear" for m in driven for t in (m.vertical, m.twist))
+    n = given or step.steps_per_second(float(frequency.max()), top)
+    while True:
+        before = table_cells(model.length, 4.0 / n)
+        vertical, twist = _fine_tables(model, driven, before)
+        both = vertical if twist is None else np.hstack([vertical, 0.5 * model.width * twist])
+        ends = np.abs(both[[before, before + CELLS]]).max(axis=0)
+        jumps = bool(np.any(ends > 1e-6 * np.abs(both[before : before + CELLS + 1]).max()))
+        choice = step.choose(
+            scheme, frequency, damping, top, both, before, model.length / CELLS, speed,
+            sharp=jumps or not resonates(driven, streams), per_second=n,
+        )  # fmt: skip
+        fine = choice.ordinate_error <= step.ORDINATE_ERROR or kinked or given or n >= FINEST
+        if fine or not math.isfinite(choice.history_error):
+            return choice, deck_table(vertical, twist, model.length, before)
+        n = min(FINEST, math.ceil(1.5 * n / 20) * 20)
+
+
+def _fine_tables(model: ModalModel, driven: tuple[Mode, ...], before: int) -> tuple[Floats, Floats | None]:
     cell = model.length / CELLS
     s: Floats = (np.arange(CELLS + 2 * before + 2, dtype=np.float64) - before) * cell
     zero = np.zeros(s.size)
     vertical = np.stack([m.vertical(s) if m.vertical else zero for m in driven], axis=1)
-    twist = None
-    if any(m.twist for m in driven):
-        twist = np.stack([m.twist(s) if m.twist else zero for m in driven], axis=1)
-    both = vertical if twist is None else np.hstack([vertical, 0.5 * model.width * twist])
-    inside = both[before : before + CELLS + 1]
-    jumps = bool(np.any(np.abs(inside[[0, -1]]) > 1e-6 * np.abs(inside).max()))
-    choice = step.choose(
-        newmark.Newmark.named(run.integration, run.matched),
-        np.array([m.frequency for m in driven]),
-        np.array([m.damping for m in driven]),
-        top, both, before, cell, speed, jumps=jumps, per_second=per_second,
-    )  # fmt: skip
-    return choice, deck_table(vertical, twist, model.length, before)
+    if not any(m.twist for m in driven):
+        return vertical, None
+    return vertical, np.stack([m.twist(s) if m.twist else zero for m in driven], axis=1)
+
+
+def resonates(driven: tuple[Mode, ...], streams: tuple[Stream, ...]) -> bool:
+    """Whether a harmonic of any stream comes near the frequency of any mode."""
+    for stream in streams:
+        low = float(stream.walkers.pace.quantile(SLOWEST_SHARE))
+        high = float(stream.walkers.pace.quantile(FASTEST_SHARE))
+        for k, factor in enumerate(stream.load.factors(np.array([0.5 * (low + high)]))[0], start=1):
+            for mode in driven:
+                band = max(3.0 * mode.damping, 0.03) * mode.frequency
+                if factor > 0.0 and k * low - band <= mode.frequency <= k * high + band:
+                    return True
+    return False
 
 
 def _top_harmonic(load: loads.LoadSet) -> int:

@@ -16,7 +16,7 @@ from crowdsim.crowd.arrivals import GivenArrivals
 from crowdsim.dynamics.step import HARMONIC_ANGLE
 from crowdsim.response.statistics import LEAST_FOR_INTERVAL
 from crowdsim.scenario.reader import Scenario
-from crowdsim.study.prepare import FASTEST_SHARE, SLOWEST_SHARE, Case
+from crowdsim.study.prepare import SLOWEST_SHARE, Case, resonates
 
 MASS_PER_AREA = (15.0, 1500.0)  # kg/m2 of modal mass at a unit ordinate, common practice
 DAMPING_LIKELY = 0.03
@@ -137,7 +137,7 @@ def _case(scenario: Scenario, case: Case) -> list[Finding]:
     if not any(m.driven for m in case.model.modes):
         found.append(Finding("error", "mode", "no mode has a vertical or twist ordinate: no force would drive any"))
         return found
-    if not _reached(case):
+    if not resonates(case.driven, case.streams):
         warn(
             f"case {case.name}",
             "no harmonic of any stream reaches the frequency of any mode; the response is quasi-static. Check "
@@ -189,15 +189,3 @@ def _case(scenario: Scenario, case: Case) -> list[Finding]:
             "at least as long",
         )
     return found
-
-
-def _reached(case: Case) -> bool:
-    for stream in case.streams:
-        low = float(stream.walkers.pace.quantile(SLOWEST_SHARE))
-        high = float(stream.walkers.pace.quantile(FASTEST_SHARE))
-        for k, factor in enumerate(stream.load.factors(np.array([0.5 * (low + high)]))[0], start=1):
-            for mode in case.driven:
-                band = max(3.0 * mode.damping, 0.03) * mode.frequency
-                if factor > 0.0 and k * low - band <= mode.frequency <= k * high + band:
-                    return True
-    return False

@@ -120,7 +120,7 @@ def test_the_stated_history_error(scheme):
     frequency, damping, top, dt = 3.0, 0.05, 6.0, 1.0 / 120.0
     ordinates = np.sin(np.pi * np.linspace(-0.1, 1.1, 4930))[:, None]
     choice = step.choose(
-        scheme, np.array([frequency]), np.array([damping]), top, ordinates, 400, 0.01, 1.3, jumps=False, per_second=120
+        scheme, np.array([frequency]), np.array([damping]), top, ordinates, 400, 0.01, 1.3, sharp=False, per_second=120
     )
     u, v, before, now, du, dv, dbefore, dnow, force, drag, spring = step_coefficients(
         scheme, np.array([frequency]), np.array([damping]), np.array([1.0]), dt
@@ -137,13 +137,22 @@ def test_the_stated_history_error(scheme):
 
 
 def test_choice_of_the_samples():
-    """Every step where an end moves; every fourth on a long smooth deck; fewer between where a chunk bends."""
+    """Every step where asked; every fourth on a long smooth deck; fewer between where a chunk bends."""
     s = (np.arange(CELLS + 602) - 300) / CELLS
 
-    def factor(half_waves, length, jumps):
+    def factor(half_waves, length, sharp):
         table = np.sin(half_waves * np.pi * s)[:, None]
         return step.choose(
-            Newmark(), np.array([2.0]), np.array([0.005]), 6.0, table, 300, length / CELLS, 1.4, jumps=jumps
+            Newmark(),
+            np.array([2.0]),
+            np.array([0.005]),
+            6.0,
+            table,
+            300,
+            length / CELLS,
+            1.4,
+            sharp=sharp,
+            per_second=140,
         ).factor
 
     assert factor(1, 60.0, True) == 1
