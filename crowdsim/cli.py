@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import signal
 import sys
 from pathlib import Path
 from typing import Annotated, NoReturn
@@ -25,7 +26,7 @@ CaseName = Annotated[str | None, typer.Option("--case", help="Only the case of t
 Count = Annotated[
     int | None, typer.Option("--realisations", min=1, max=10_000_000, help="Default: the scenario's.", metavar="N")
 ]
-Seed = Annotated[int | None, typer.Option("--seed", min=0, help="Default: the scenario's.", metavar="S")]
+Seed = Annotated[int | None, typer.Option("--seed", min=0, max=2**63 - 1, help="Default: the scenario's.", metavar="S")]
 Workers = Annotated[
     int | None, typer.Option("--workers", min=1, max=1024, help="Threads; changes no number.", metavar="W")
 ]
@@ -49,11 +50,15 @@ def simulate(
 ) -> None:
     """Simulate every case of a scenario and write the results file."""
     from crowdsim.console import Console, RunProgress
+    from crowdsim.errors import ResultsError
     from crowdsim.results.summary import summarise
     from crowdsim.scenario.reader import read_scenario
     from crowdsim.study.simulate import plan, simulate_to
 
     console = Console(quiet=quiet, verbose=verbose, json=json)
+    if out.resolve() == scenario.resolve():
+        raise ResultsError(f"{out}: is the scenario itself; --out takes the name of a results file")
+    signal.signal(signal.SIGTERM, signal.default_int_handler)  # ends like Ctrl-C: what is finished is kept
     prepared = plan(read_scenario(scenario), case=case, realisations=realisations, seed=seed)
     with RunProgress(console) as progress:
         simulate_to(prepared, out, workers=workers, progress=progress, force=force)
@@ -109,12 +114,16 @@ def main() -> NoReturn:
     """Runs the command line; errors raised on purpose become one message and their exit status."""
     from crowdsim.errors import EXIT_OTHER, CrowdsimError
 
+    for stream in (sys.stdout, sys.stderr):
+        if hasattr(stream, "reconfigure"):
+            stream.reconfigure(errors="replace")  # a name that the terminal cannot show ends no run
     try:
-        app()
+        status = app(standalone_mode=False)
+        sys.exit(status if isinstance(status, int) else 0)
     except CrowdsimError as error:
         typer.echo(str(error), err=True)
         sys.exit(error.exit_status)
-    except KeyboardInterrupt:
+    except (KeyboardInterrupt, typer.Abort):
         typer.echo("stopped; nothing was written", err=True)
         sys.exit(EXIT_OTHER)
     except BrokenPipeError:
@@ -122,4 +131,8 @@ def main() -> NoReturn:
     except OSError as error:
         typer.echo(f"{error.filename or 'crowdsim'}: {error.strerror or error}", err=True)
         sys.exit(EXIT_OTHER)
-    sys.exit(0)
+    except Exception as error:
+        if not hasattr(error, "exit_code") or not hasattr(error, "show"):
+            raise
+        error.show()  # the command line itself is at fault
+        sys.exit(error.exit_code)

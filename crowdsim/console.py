@@ -6,6 +6,7 @@ import json as json_module
 import textwrap
 import time
 from bisect import insort
+from math import floor, isfinite, log10
 from types import TracebackType
 from typing import Any
 
@@ -15,7 +16,7 @@ from rich.progress import Progress as Bar
 from rich.table import Table
 
 from crowdsim.response.statistics import LEAST_FOR_INTERVAL, Distribution1D, percentile_rank
-from crowdsim.results.summary import CaseSummary, Summary
+from crowdsim.results.summary import CaseSummary, DeckSummary, Summary
 from crowdsim.study.executor import default_workers
 from crowdsim.study.jobs import Row
 from crowdsim.study.progress import Progress
@@ -30,6 +31,7 @@ CAUTION = (
 _PER_PERSON_STEP = 0.5e-9
 _PER_STEP = 12e-9
 _START = 1.0
+FEW = 20  # realisations below which 95 % is the largest of all
 
 
 def number(value: float, digits: int = 3) -> str:
@@ -38,8 +40,6 @@ def number(value: float, digits: int = 3) -> str:
         return "0"
     if not 1e-4 <= abs(value) < 1e6:
         return f"{value:.{digits - 1}e}"
-    from math import floor, log10
-
     places = max(0, digits - 1 - floor(log10(abs(value))))
     return f"{value:,.{places}f}"
 
@@ -60,6 +60,36 @@ def interval(values: Distribution1D) -> str:
     return f"{number(values.p95.low)} to {number(values.p95.high)}"
 
 
+def _or_dash(value: float | None) -> str:
+    return "-" if value is None else number(value)
+
+
+def _headline(case: CaseSummary, deck: DeckSummary) -> str:
+    """The answer of a case in one direction, as a sentence."""
+    p = deck.peak
+    if p.largest == 0.0:
+        if deck.direction != "vertical":
+            return f"No {deck.direction} response: no force acts in that direction in this version."
+        return "No vertical response: nobody stepped on in time, or everybody walks where no mode moves."
+    where = f"It is largest at s = {number(deck.s)} m, e = {number(deck.e)} m."
+    if case.realisations < FEW:
+        spans = f"{case.realisations} spans" if case.realisations > 1 else "one span"
+        return (
+            f"The largest {deck.direction} acceleration anywhere on the deck in {spans} of {span(case.duration)} is "
+            f"{number(p.largest)} m/s2; a 95 % value takes at least {FEW} realisations, its interval "
+            f"{LEAST_FOR_INTERVAL}. {where}"
+        )
+    sure = (
+        f"95 % confidence interval {interval(p)}"
+        if p.p95.low is not None
+        else f"no interval: that takes {LEAST_FOR_INTERVAL} realisations"
+    )
+    return (
+        f"In an estimated 95 of 100 such spans of {span(case.duration)} the largest {deck.direction} acceleration "
+        f"anywhere on the deck stays at or below {number(p.p95.value)} m/s2 ({sure}). {where}"
+    )
+
+
 class Console:
     """Prints results on standard output, all else on standard error."""
 
@@ -78,7 +108,7 @@ class Console:
     def _table(self, title: str, columns: list[tuple[str, str]], rows: list[list[str]]) -> None:
         table = Table(title=title, title_justify="left", title_style="bold", box=None, pad_edge=False, padding=(0, 1))
         for name, side in columns:
-            table.add_column(name, justify="right" if side == "r" else "left", no_wrap=side == "r")
+            table.add_column(name, justify="right" if side == "r" else "left", no_wrap=side != "l")
         for row in rows:
             table.add_row(*row)
         self.out.print(table)
@@ -125,32 +155,16 @@ class Console:
             shifted = ", ".join(f"{m['name']} at {number(m['frequency'], 4)} Hz" for m in mass)
             self.out.print(f"With the people's mass: {shifted}.")
         for deck in case.deck:
-            p = deck.peak
-            if p.largest == 0.0:
-                self.out.print(f"No {deck.direction} response: no force acts in that direction in this version.")
-                continue
-            sure = (
-                f"95 % confidence interval {interval(p)}"
-                if p.p95.low is not None
-                else f"no interval: that takes {LEAST_FOR_INTERVAL} realisations"
-            )
-            self.out.print(
-                textwrap.fill(
-                    f"In 95 of 100 such spans of {span(case.duration)} the largest {deck.direction} acceleration "
-                    f"anywhere on the deck stays at or below {number(p.p95.value)} m/s2 ({sure}). It is largest at "
-                    f"s = {number(deck.s)} m, e = {number(deck.e)} m.",
-                    self.out.width,
-                )
-            )
+            self.out.print(textwrap.fill(_headline(case, deck), self.out.width))
         rows = []
         for point in case.points:
             p = point.peak
             rows.append(
-                [point.name, number(point.s), number(point.e), point.direction, number(p.mean), number(p.sd),
+                [point.name, number(point.s), number(point.e), point.direction, number(p.mean), _or_dash(p.sd),
                  number(p.median), number(p.p95.value), interval(p), number(p.largest), number(point.rms.mean),
                  number(point.running_rms_max.p95.value)]
             )  # fmt: skip
-        columns = [("at", "l"), ("s, m", "r"), ("e, m", "r"), ("direction", "l"), ("mean", "r"), ("sd", "r"),
+        columns = [("at", "l"), ("s, m", "r"), ("e, m", "r"), ("direction", "k"), ("mean", "r"), ("sd", "r"),
                    ("median", "r"), ("95 % value", "r"), ("its 95 % interval", "r"), ("largest", "r"),
                    ("RMS, mean", "r"), ("1 s RMS, 95 %", "r")]  # fmt: skip
         self._table("Peak acceleration, m/s2, and RMS", columns, rows)
@@ -192,7 +206,7 @@ class Console:
              s.walkers.weight.text("N"), s.load.name, number(s.persons)]
             for s in case.streams
         ]  # fmt: skip
-        columns = [("stream", "l"), ("pace", "l"), ("mean speed", "r"), ("weight", "l"), ("load", "l"),
+        columns = [("stream", "l"), ("pace", "l"), ("speed, mean on deck", "r"), ("weight", "l"), ("load", "l"),
                    ("on deck", "r")]  # fmt: skip
         self._table("Streams", columns, rows)
         c = case.choice
@@ -238,7 +252,7 @@ def check_dict(plan: Plan) -> dict[str, Any]:
                 "name": case.name,
                 "persons_on_deck": case.persons,
                 "time_step": case.choice.time_step,
-                "expected_error": case.choice.expected_error,
+                "expected_error": case.choice.expected_error if isfinite(case.choice.expected_error) else None,
                 "warm_up": case.warm_up,
                 "duration": case.duration,
                 "person_steps": plan.realisations * plan.person_steps(case),

@@ -98,7 +98,7 @@ class Distribution:
             x = self.mean + self.sd * z
         else:
             m, s = self.log_parameters
-            x = np.exp(m + s * z)
+            x = np.array([math.exp(m + s * v) for v in z.ravel()]).reshape(z.shape)
         return np.asarray(np.clip(x, self.minimum, self.maximum), dtype=np.float64)
 
     @cached_property
@@ -128,7 +128,8 @@ class Distribution:
     def expectation(self, power: float = 1.0) -> float:
         """E[x^power] of the truncated distribution."""
         x, w = self.nodes
-        return float(math.fsum(w * x**power))
+        # math.pow: numpy's own power may differ in the last bit from processor to processor
+        return math.fsum(wi * math.pow(xi, power) for wi, xi in zip(w, x, strict=True))
 
     def draw(self, generator: np.random.Generator, count: int) -> Floats:
         """`count` values. The i-th is the i-th accepted draw, whatever the count."""

@@ -15,6 +15,7 @@ Floats = NDArray[np.float64]
 
 QUANTITIES = {
     "arrival": 1, "direction": 2, "pace": 3, "length": 4, "weight": 5, "offset": 6, "phase": 7, "place": 8, "load": 9,
+    "harmonic phase": 10,
 }  # fmt: skip
 
 

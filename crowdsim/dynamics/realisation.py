@@ -30,7 +30,7 @@ from crowdsim.dynamics.kernels import (
 
 Floats = NDArray[np.float64]
 CELLS = 4096
-FASTEST = 12.0  # m/s; nobody runs faster
+FASTEST = 18.1  # m/s: the largest pace x step length that a scenario can draw
 BLOCK = 1024  # samples
 
 

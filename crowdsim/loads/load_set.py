@@ -10,6 +10,7 @@ from numpy.typing import NDArray
 
 Floats = NDArray[np.float64]
 _TRIES = 4
+PHASES = 8  # drawn for every person, however many the set needs
 
 
 @dataclass(frozen=True)
@@ -55,27 +56,25 @@ class LoadSet:
         """Number of harmonics."""
         return int(self.factors(np.array([self.pace_range[0]])).shape[1])
 
-    def draw(self, pace: Floats, generator: np.random.Generator) -> tuple[Floats, Floats]:
+    def draw(
+        self, pace: Floats, factor_random: np.random.Generator, phase_random: np.random.Generator
+    ) -> tuple[Floats, Floats]:
         """Load factors and phases [person, harmonic] of persons at `pace` [Hz].
 
-        A person's draws do not depend on how many others there are. A factor that comes out
+        A person's draws do not depend on how many others there are, nor the phases on the set: all
+        sets without phases of their own give a person the same ones. A factor that comes out
         negative is redrawn.
         """
         held = self.held(np.asarray(pace, dtype=np.float64))
         factors = self.mean(held)
         count, harmonics = factors.shape
-        random_phase = self.phases is None
-        width = harmonics * ((1 if random_phase else 0) + (_TRIES if self.scatter else 0))
-        uniform = generator.random((count, width)) if width else np.zeros((count, 0))
-        if random_phase:
-            phases = 2.0 * np.pi * uniform[:, :harmonics]
+        if self.phases is None:
+            phases = 2.0 * np.pi * phase_random.random((count, PHASES))[:, :harmonics]
         else:
             phases = np.broadcast_to(np.array(self.phases, dtype=np.float64), factors.shape)
         if self.scatter:
             assert self.spread is not None
-            from scipy.special import ndtri
-
-            tries = ndtri(uniform[:, width - harmonics * _TRIES :].reshape(count, _TRIES, harmonics))
+            tries = factor_random.standard_normal((count, _TRIES, harmonics))
             values = factors[:, None, :] + self.spread(held)[:, None, :] * tries
             pick = np.argmax(values > 0.0, axis=1)
             factors = np.abs(np.take_along_axis(values, pick[:, None, :], axis=1)[:, 0, :])

@@ -21,15 +21,16 @@ def _columns(*columns: Floats | float) -> Floats:
 
 
 def bachmann_ammann_1987(pace: Floats) -> Floats:
-    """a1 = 0.4 at 2.0 Hz rising to 0.5 at 2.4 Hz, a2 = a3 = 0.1; valid for 1.6 to 2.4 Hz.
+    """a1 = 0.4 up to 2.0 Hz, rising to 0.5 at 2.4 Hz, a2 = a3 = 0.1; valid for 1.6 to 2.4 Hz.
 
     Bachmann & Ammann, Vibrations in Structures, IABSE Structural Engineering Documents 3e, 1987;
-    from memory, the range read in a text that quotes it. Second and third harmonic lag by pi/2.
+    from memory, the range read in a text that quotes it. The source has a1 at 2.0 and 2.4 Hz; below
+    2.0 Hz it is held at 0.4 (this program's choice). Second and third harmonic lag by pi/2.
 
     >>> bachmann_ammann_1987(np.array([2.0, 2.4])).round(3).tolist()
     [[0.4, 0.1, 0.1], [0.5, 0.1, 0.1]]
     """
-    return _columns(0.4 + 0.25 * (pace - 2.0), 0.1, 0.1)
+    return _columns(0.4 + 0.25 * np.maximum(pace - 2.0, 0.0), 0.1, 0.1)
 
 
 def kerr_1998(pace: Floats) -> Floats:
@@ -42,7 +43,7 @@ def kerr_1998(pace: Floats) -> Floats:
     [0.328, 0.405]
     """
     f = pace
-    return _columns(-0.2649 * f**3 + 1.3206 * f**2 - 1.7597 * f + 0.7613, 0.07, 0.05)
+    return _columns(((-0.2649 * f + 1.3206) * f - 1.7597) * f + 0.7613, 0.07, 0.05)
 
 
 def young_2001_mean(pace: Floats) -> Floats:

@@ -50,11 +50,11 @@ class Percentile:
 
 @dataclass(frozen=True)
 class Distribution1D:
-    """A measure over the realisations."""
+    """A measure over the realisations; `sd` is None for a single one."""
 
     count: int
     mean: float
-    sd: float
+    sd: float | None
     median: float
     p95: Percentile
     largest: float
@@ -77,7 +77,7 @@ def describe(values: Floats) -> Distribution1D:
     return Distribution1D(
         count=values.size,
         mean=float(np.mean(values)),
-        sd=float(np.std(values, ddof=1)) if values.size > 1 else 0.0,
+        sd=float(np.std(values, ddof=1)) if values.size > 1 else None,
         median=float(np.median(values)),
         p95=percentile(values),
         largest=float(np.max(values)),

@@ -23,7 +23,8 @@ from crowdsim.errors import ResultsError
 Floats = NDArray[np.float64]
 FORMAT = "crowdsim results"
 FORMAT_VERSION = 1
-_BUFFER = 256
+_BUFFER = 256  # rows
+_BUFFER_BYTES = 16_000_000
 _ACCELERATION = "m/s2"
 
 
@@ -63,7 +64,9 @@ def fingerprint() -> dict[str, str]:
     features = llvmlite.binding.get_host_cpu_features()
     return {
         "machine": platform.machine(),
-        "fused_multiply_add": str(bool(features.get("fma", False) or "arm" in platform.machine())),
+        "fused_multiply_add": str(
+            bool(features.get("fma", False)) or platform.machine().lower() in ("aarch64", "arm64")
+        ),
         "numpy": np.__version__,
         "numba": numba.__version__,
         "llvmlite": llvmlite.__version__,
@@ -87,6 +90,7 @@ class CaseWriter:
         self.group, self.head = group, head
         self.count = 0
         self._rows: list[tuple[Any, ...]] = []
+        self._bytes = 0
         points = len(head.points)
         windows = head.windows
         attributes: dict[str, Any] = {
@@ -136,7 +140,11 @@ class CaseWriter:
         size = 8 * max(int(np.prod(shape)), 1)
         rows = int(max(16, min(_BUFFER * 4, 262_144 // size)))
         data = group.create_dataset(
-            name, shape=(0, *shape), maxshape=(None, *shape), chunks=(rows, *(max(n, 1) for n in shape)), dtype=kind
+            name,
+            shape=(0, *shape),
+            maxshape=(None, *(n or None for n in shape)),
+            chunks=(rows, *(max(n, 1) for n in shape)),
+            dtype=kind,
         )
         data.attrs["units"] = units
         return data
@@ -147,7 +155,8 @@ class CaseWriter:
             (response.peak, response.rms, response.running_rms_max, response.peak_time, response.window_peak,
              crossings, response.envelope)
         )  # fmt: skip
-        if len(self._rows) >= _BUFFER:
+        self._bytes += response.window_peak.nbytes + response.envelope.nbytes
+        if len(self._rows) >= _BUFFER or self._bytes > _BUFFER_BYTES:
             self.flush()
 
     def flush(self) -> None:
@@ -167,6 +176,7 @@ class CaseWriter:
             data[begin:end] = whole[:, i]
         self.count = end
         self._rows.clear()
+        self._bytes = 0
 
     def history(self, number: int, start: int, acceleration: Floats) -> None:
         """Keeps the history of realisation `number`, whose first row is step `start`."""

@@ -8,6 +8,7 @@ from typing import Any
 
 from crowdsim.crowd.populations import POPULATIONS
 from crowdsim.loads import sets
+from crowdsim.scenario.quantities import FLOORS, Random
 from crowdsim.scenario.schema import ScenarioFile, StreamTable
 
 Found = tuple[tuple[str | int, ...], str, str]
@@ -18,6 +19,7 @@ CLASSES = {
     "en-1990": (),
 }
 LARGEST_DAMPING = 0.2
+FASTEST = 12.0  # m/s
 
 
 def _choice(given: str, names: Iterable[str]) -> str:
@@ -81,16 +83,30 @@ def _streams(file: ScenarioFile) -> Iterator[Found]:
             yield from _mean_at(file, stream, (*key, "pace", "mean_at"), modes)
         if stream.load is not None and stream.load.set is not None:
             yield from _load(stream, (*key, "load"))
+        for name in ("pace", "step_length", "speed", "weight"):
+            given = getattr(stream, name)
+            if given is not None and getattr(given, "mean_at", None) is None:
+                yield from _buildable(given, (*key, name), *FLOORS[name])
         offset = stream.offset
-        if offset is not None:
-            low = offset.min if offset.min is not None else offset.mean
-            high = offset.max if offset.max is not None else offset.mean
-            if offset.distribution == "fixed" and abs(offset.mean or 0.0) > half:
+        if offset is not None and offset.distribution == "fixed":
+            if abs(offset.mean or 0.0) > half:
                 yield (*key, "offset"), f"{offset.mean:g} m", f"within the width: -{half:g} to {half:g} m"
-            elif offset.distribution != "fixed" and (
-                (low is not None and low >= half) or (high is not None and high <= -half)
-            ):
-                yield (*key, "offset"), "lies off the deck", f"within the width: -{half:g} to {half:g} m"
+        elif offset is not None:
+            low = max(-half, -half if offset.min is None else offset.min)
+            high = min(half, half if offset.max is None else offset.max)
+            cut = offset.model_copy(update={"min": low, "max": high})
+            yield from _buildable(cut, (*key, "offset"), -half, half)
+        if stream.pace is not None and stream.step_length is not None:
+            pace, step = (q.max if q.max is not None else q.mean or 0.0 for q in (stream.pace, stream.step_length))
+            if stream.pace.distribution == stream.step_length.distribution == "fixed" and pace * step > FASTEST:
+                yield (*key, "step_length"), f"{pace * step:.3g} m/s with this pace", f"at most {FASTEST:g} m/s"
+
+
+def _buildable(given: Random, key: tuple[str | int, ...], low: float, high: float) -> Iterator[Found]:
+    try:
+        given.build(low, high)
+    except ValueError as error:
+        yield key, str(error), f"values from {low:g} to {high:g} are possible here"
 
 
 def _mean_at(file: ScenarioFile, stream: StreamTable, key: tuple[str | int, ...], modes: list[str]) -> Iterator[Found]:
@@ -120,7 +136,7 @@ def _load(stream: StreamTable, key: tuple[str | int, ...]) -> Iterator[Found]:
     try:
         sets.load_set(stream.gait, load.set, scatter=load.scatter, contact_ratio=load.contact_ratio)
     except ValueError as error:
-        yield key, str(error), "leave the key out, or choose another set"
+        yield key, str(error), "as in the README, or another set"
 
 
 def _cases(file: ScenarioFile) -> Iterator[Found]:
@@ -152,5 +168,5 @@ def _run(file: ScenarioFile) -> Iterator[Found]:
     step = file.run.time_step
     if step is not None:
         n = round(1.0 / step)
-        if abs(1.0 / step - n) > 0.05:
+        if abs(1.0 / step - n) > 0.01:
             yield ("run", "time_step"), f"{step:g} s", f"1/n s with n whole: 1/{n} s = {1 / n:.6g}, say"

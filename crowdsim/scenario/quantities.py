@@ -11,6 +11,9 @@ from pydantic_core import PydanticCustomError
 from crowdsim.crowd.distributions import Distribution
 from crowdsim.scenario.units import UnitError, parse
 
+# least and largest value of a quantity that has no min or max of its own
+FLOORS = {"pace": (0.3, 6.0), "step_length": (0.1, 3.0), "speed": (0.1, 12.0), "weight": (10.0, 10_000.0)}
+
 
 class Table(BaseModel):
     """A table of a scenario: unknown keys are errors, nothing is changed after reading."""

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import difflib
+import re
 import tomllib
 import types
 import typing
@@ -18,6 +19,7 @@ from crowdsim.scenario.lines import key_lines, key_text, line_of
 from crowdsim.scenario.schema import ScenarioFile
 
 _LARGEST_FILE = 20_000_000
+LATER = {"option": "retrofit options", "modes_from": "modes from tables or records"}
 
 
 @dataclass(frozen=True)
@@ -89,6 +91,8 @@ def _problem(error: Any, raw: dict[str, Any], lines: dict[Any, int]) -> Problem:
     if kind == "missing":
         return Problem(key_text(path), "missing", _about(path), line)
     if kind == "extra_forbidden":
+        if path[0] in LATER:
+            return Problem(key_text(path[:1]), f"{LATER[path[0]]}: not in this version", "leave it out for now", line)
         known = _known_keys(path[:-1])
         near = difflib.get_close_matches(str(path[-1]), known, 1, 0.6)
         allowed = (f"did you mean {near[0]}? " if near else "") + "known here: " + ", ".join(known)
@@ -104,7 +108,8 @@ def _problem(error: Any, raw: dict[str, Any], lines: dict[Any, int]) -> Problem:
         near = difflib.get_close_matches(str(given), expected.split(", "), 1, 0.6)
         allowed = (f"did you mean {near[0]}? " if near else "") + f"one of {expected}"
         return Problem(key_text(path), f"{_short(given)} given", allowed, line)
-    message = error["msg"].replace("Input should be", "should be").replace("a valid dictionary or instance of", "a")
+    message = error["msg"].replace("Input should be", "should be").replace("valid dictionary or instance of ", "table ")
+    message = re.sub(r"a table \w+$", "a table { ... }", message)
     return Problem(key_text(path), f"{_short(given)} given", message[:1].lower() + message[1:], line)
 
 

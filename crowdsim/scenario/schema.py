@@ -8,6 +8,7 @@ from pydantic import BeforeValidator, Field, model_validator
 
 from crowdsim.scenario.quantities import (
     Acceleration,
+    Angle,
     BodyWeight,
     Density,
     Flow,
@@ -47,7 +48,7 @@ class DeckTable(Table):
 class Shape(Table):
     """Ordinates along the deck: half waves, or a table of points from 0 to the deck's length."""
 
-    half_waves: int | None = Field(None, ge=1, le=50, description="sin(n pi s / L)")
+    half_waves: int | None = Field(None, ge=1, le=50, strict=True, description="sin(n pi s / L)")
     amplitude: Number = Field(1.0, description="factor of the half waves")
     s: list[Length] | None = Field(None, description="places [m], growing, from 0 to the length")
     value: list[Number] | None = Field(None, description="ordinates there")
@@ -98,7 +99,7 @@ class Arrival(Table):
 
     per_hour: Annotated[Flow, Field(gt=0)] | None = Field(None, description="Poisson, persons per hour")
     density: Annotated[Density, Field(gt=0, le=6)] | None = Field(None, description="Poisson, persons/m2 on average")
-    constant: int | None = Field(None, ge=1, le=100000, description="exactly this many on the deck")
+    constant: int | None = Field(None, ge=1, le=100000, strict=True, description="exactly this many on the deck")
     times: list[Annotated[Time, Field(ge=0)]] | None = Field(None, min_length=1, description="given times [s]")
 
     @model_validator(mode="after")
@@ -116,7 +117,7 @@ class Load(Table):
     harmonics: list[Annotated[Number, Field(ge=0, le=10)]] | None = Field(
         None, min_length=1, max_length=HARMONICS_LIMIT, description="amplitude / weight of harmonic 1, 2, ..."
     )
-    phases: list[float] | None = Field(None, description="phase of each harmonic [rad], default 0")
+    phases: list[Angle] | None = Field(None, description="phase of each harmonic [rad], default 0")
     set: str | None = Field(None, description="name of a published set")
     scatter: bool | None = Field(None, description="draw each person's factors from the source's scatter")
     contact_ratio: Number | None = Field(None, description="half-sine: contact time x pace")
@@ -184,9 +185,9 @@ class RunTable(Table):
     """How much is simulated, and how."""
 
     duration: Annotated[Time, Field(ge=1, le=1e7)] = Field(900.0, description="observed time [s]")
-    realisations: int = Field(200, ge=1, le=10_000_000)
-    seed: int = Field(1, ge=0, lt=2**63)
-    time_step: Annotated[Time, Field(gt=0, le=0.1)] | None = Field(None, description="1/n s; default chosen")
+    realisations: int = Field(200, ge=1, le=10_000_000, strict=True)
+    seed: int = Field(1, ge=0, lt=2**63, strict=True)
+    time_step: Annotated[Time, Field(ge=1e-4, le=0.1)] | None = Field(None, description="1/n s; default chosen")
     warm_up: Annotated[Time, Field(ge=0, le=1e6)] | None = Field(None, description="[s]; default chosen")
     integration: Literal["fox-goodwin", "linear-acceleration", "average-acceleration"] = "fox-goodwin"
     matched: bool = Field(True, description="stiffness and damping matched to the step")

@@ -27,8 +27,9 @@ KINDS = {
 }
 _PINT_UNIT = {"m/s2": "m/s**2", "1/m2": "1/m**2", "1/h": "1/hour", "": "dimensionless"}
 _NUMBER = re.compile(r"^\s*([+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?)\s*(.*?)\s*$")
-_ANGULAR = re.compile(r"\b(rad|radians?|deg|degrees?|turns?|rev|revolutions?|rpm)\b", re.IGNORECASE)
-_COUNTED = re.compile(r"\b(persons?|people|pedestrians?|walkers?|steps?)\b", re.IGNORECASE)
+_COUNTED = re.compile(r"\b(persons?|people|pedestrians?|walkers?|joggers?|steps?|cycles?)\b", re.IGNORECASE)
+_ROTATIONS = {"revolutions_per_minute", "revolutions_per_second", "counts_per_second"}
+_SHARES = {"percent", "permille", "dimensionless", "count"}
 
 
 class UnitError(ValueError):
@@ -65,12 +66,12 @@ def parse(kind: str, value: object, notes: list[str] | None = None) -> float:
     if not match:
         raise UnitError(f"{value!r} is no number with a unit", allowed)
     number, unit = float(match.group(1)), match.group(2)
+    if unit.startswith(","):
+        raise UnitError(f"{value!r}: a comma", "a decimal point: " + value.replace(",", ".", 1))
     if not unit:
         raise UnitError(f"{value!r} has no unit", allowed)
     if re.search(r"\btons?\b", unit, re.IGNORECASE):
         raise UnitError(f"{value!r}: ton is ambiguous", "write t for 1000 kg, or kg, lb")
-    if kind in ("frequency", "flow") and _ANGULAR.search(unit):
-        raise UnitError(f"{value!r} is an angular frequency", "write it in Hz or per minute")
     if kind == "mass" and re.fullmatch(r"k?N|MN", unit):
         raise UnitError(f"{value!r} is a force", "a mass: in kg or t")
     text = _COUNTED.sub("", unit).strip()
@@ -91,12 +92,17 @@ def _convert(
         quantity = registry.Quantity(number, registry.parse_units(text) if "1/" not in text else None)
         if "1/" in text:
             quantity = number * registry.parse_expression(text)
+        if kind not in ("angle", "rotation") and _has_angle(registry, quantity):
+            hint = "write it in Hz or per minute" if kind in ("frequency", "flow") else allowed
+            raise UnitError(f"{given!r} has an angle in it", hint)
         if kind == "weight" and quantity.check("[mass]"):
             newton = float(quantity.to("kg").magnitude) * GRAVITY
             if notes is not None:
                 notes.append(f"weight {given!r} taken as {newton:.4g} N (times {GRAVITY} m/s2)")
             return newton
         result = float(quantity.to(target).magnitude)
+    except UnitError:
+        raise
     except pint.DimensionalityError:
         raise UnitError(f"{given!r} is of the wrong kind for a {kind}", allowed) from None
     except Exception:
@@ -104,3 +110,9 @@ def _convert(
     if not math.isfinite(result):
         raise UnitError(f"{given!r} given", allowed)
     return result
+
+
+def _has_angle(registry: Any, quantity: Any) -> bool:
+    """Whether any unit of the quantity is a bare number other than a share: radians, turns, degrees, counts of them."""
+    names = quantity._units
+    return any((registry.Unit(name).dimensionless and name not in _SHARES) or name in _ROTATIONS for name in names)

@@ -27,13 +27,14 @@ def assumptions(scenario: Scenario, case: Case) -> list[str]:
             said.append(f"{name}: speed {walkers.speed.text('m/s')}, step length follows")
         elif walkers.step_length is not None:
             said.append(f"{name}: step length {walkers.step_length.text('m')}, speed = pace x step length")
-        phases = "the same for all" if walkers.phase is not None and walkers.phase.kind == "fixed" else "random"
-        each = "" if stream.load.phases is not None else ", each harmonic's for itself (the source gives no phases)"
-        said.append(f"{name}: phase {phases}{each}; walking line e {walkers.offset.text('m')}")
+        phase = "uniform at random" if walkers.phase is None else walkers.phase.text("rad")
+        each = "as the load set has them" if stream.load.phases is not None else "each at random (the source has none)"
+        said.append(f"{name}: phase of the first step {phase}; phases of the harmonics {each}")
+        said.append(f"{name}: walking line e {walkers.offset.text('m')}")
         if stream.outside > 0.0005:
             low, high = stream.load.pace_range
             said.append(
-                f"{name}: {100 * stream.outside:.2g} % of paces outside {low:g} to {high:g} Hz, held at the limit"
+                f"{name}: {100 * stream.outside:.3g} % of paces outside {low:g} to {high:g} Hz, held at the limit"
             )
     if case.people == "mass":
         changed = [

@@ -33,7 +33,8 @@ class Walks:
     def __init__(self, case: Case, stream: Stream, number: int):
         self._source = PeopleSource(stream.walkers, case.bare.length, case.seed, number)
         self._load = stream.load
-        self._random = generator(case.seed, number, stream.walkers.name, "load")
+        name = stream.walkers.name
+        self._random = [generator(case.seed, number, name, quantity) for quantity in ("load", "harmonic phase")]
         self._length = case.bare.length
         self._constant: People | None = None
         self._force: tuple[Floats, Floats] | None = None
@@ -41,7 +42,7 @@ class Walks:
     def take(self, begin: float, until: float) -> tuple[People, Passages]:
         """The persons who come before `until`, and the walks that begin from `begin` to `until`."""
         people = self._source.take(until)
-        factors, phases = self._load.draw(people.pace, self._random)
+        factors, phases = self._load.draw(people.pace, *self._random)
         force = people.weight[:, None] * factors
         cosine, sine = force * np.cos(phases), force * np.sin(phases)
         if not people.returns:

@@ -15,9 +15,11 @@ from crowdsim.crowd.distributions import Distribution, fixed
 from crowdsim.crowd.people import Walkers
 from crowdsim.crowd.populations import DEFAULT_POPULATION, POPULATIONS
 from crowdsim.dynamics import newmark, step
-from crowdsim.dynamics.realisation import CELLS, FASTEST, Deck, Recorder, deck_table, table_cells
+from crowdsim.dynamics.realisation import CELLS, Deck, Recorder, deck_table, table_cells
+from crowdsim.errors import InputError, Problem
 from crowdsim.loads import load_set as loads
 from crowdsim.loads import sets
+from crowdsim.scenario.quantities import FLOORS
 from crowdsim.scenario.reader import Scenario
 from crowdsim.scenario.schema import CaseTable, Shape, StreamTable
 from crowdsim.scenario.units import GRAVITY
@@ -27,8 +29,8 @@ STATIONS = 96
 SLOWEST_SHARE = 0.001
 FASTEST_SHARE = 0.999
 EDGE = 0.3  # m kept free beside each edge where a mode twists
+FINE_FOR_JUMPS = 400  # where a person's force begins with a step
 FINEST = 500  # steps in a second, when a short deck with many half waves asks for more
-_FLOORS = {"pace": (0.3, 6.0), "step_length": (0.1, 3.0), "speed": (0.1, FASTEST), "weight": (10.0, 10_000.0)}
 
 
 @dataclass(frozen=True)
@@ -119,7 +121,7 @@ def prepare(scenario: Scenario, table: CaseTable, seed: int | None = None) -> Ca
     warm_needed_by = "given times" if all(s.arrival.times for s in chosen) else "stream"
     model, added = bare, {m.name: 0.0 for m in bare.modes}
     for _ in range(50):
-        streams = tuple(_stream(s, model, file.run.duration) for s in chosen)
+        streams = tuple(_stream(s, model, file.run.duration, scenario.source) for s in chosen)
         if table.people == "none":
             break
         found = {m.name: _people_mass(bare, m, streams) for m in bare.modes}
@@ -166,7 +168,7 @@ def prepare(scenario: Scenario, table: CaseTable, seed: int | None = None) -> Ca
     )  # fmt: skip
 
 
-def _stream(table: StreamTable, model: ModalModel, duration: float) -> Stream:
+def _stream(table: StreamTable, model: ModalModel, duration: float, source: str) -> Stream:
     population = POPULATIONS[table.population or DEFAULT_POPULATION[table.gait]]
     sources: list[str] = []
 
@@ -179,7 +181,12 @@ def _stream(table: StreamTable, model: ModalModel, duration: float) -> Stream:
             mean = model.mode(given.mean_at).frequency / given.harmonic
             times = "" if given.harmonic == 1 else f" / {given.harmonic}"
             sources.append(f"pace: mean on the frequency of mode {given.mean_at}{times}, {mean:.4g} Hz")
-        built: Distribution = given.build(*_FLOORS[name], mean)
+        try:
+            built: Distribution = given.build(*FLOORS[name], mean)
+        except ValueError as error:
+            raise InputError(
+                source, [Problem(f"stream {table.name!r}.{name}", str(error), "other bounds, or another mean")]
+            ) from None
         return built
 
     pace = take("pace", population.pace)
@@ -188,13 +195,13 @@ def _stream(table: StreamTable, model: ModalModel, duration: float) -> Stream:
     speed = take("speed", None if table.step_length is not None else population.speed)
     assert pace is not None
     assert weight is not None
-    used = [k for k in ("pace", "weight") if getattr(table, k) is None]
-    if table.step_length is None and table.speed is None:
-        used.append("step length" if speed is None else "speed")
-    if used:
-        name = table.population or DEFAULT_POPULATION[table.gait]
-        how = "as asked" if table.population else "by default"
-        sources.append(f"{', '.join(used)}: population {name} {how} ({population.source})")
+    name = table.population or DEFAULT_POPULATION[table.gait]
+    how = "as asked" if table.population else "by default"
+    given = {"pace": table.pace, "stride": table.step_length or table.speed, "weight": table.weight}
+    for quantity, value in given.items():
+        if value is None:
+            what = ("speed" if speed is not None else "step length") if quantity == "stride" else quantity
+            sources.append(f"{what}: population {name} {how} ({population.sources[quantity]})")
     walkers = Walkers(
         name=table.name,
         arrivals=GivenArrivals(()),
@@ -294,6 +301,8 @@ def _step(
     frequency = np.array([m.frequency for m in driven])
     damping = np.array([m.damping for m in driven])
     given = round(1.0 / run.time_step) if run.time_step else None
+    # a crowd that is there at time 0 begins with a step of force, which a warm-up forgets
+    starts = run.warm_up is not None and any(isinstance(s.walkers.arrivals, ConstantNumber) for s in streams)
     kinked = any(isinstance(t, Table) and t.used == "linear" for m in driven for t in (m.vertical, m.twist))
     n = given or step.steps_per_second(float(frequency.max()), top)
     while True:
@@ -304,8 +313,11 @@ def _step(
         jumps = bool(np.any(ends > 1e-6 * np.abs(both[before : before + CELLS + 1]).max()))
         choice = step.choose(
             scheme, frequency, damping, top, both, before, model.length / CELLS, speed,
-            sharp=jumps or not resonates(driven, streams), per_second=n,
+            sharp=jumps or starts or not resonates(driven, streams), per_second=n,
         )  # fmt: skip
+        if jumps and not given and n < FINE_FOR_JUMPS:
+            n = FINE_FOR_JUMPS
+            continue
         fine = choice.ordinate_error <= step.ORDINATE_ERROR or kinked or given or n >= FINEST
         if fine or not math.isfinite(choice.history_error):
             return choice, deck_table(vertical, twist, model.length, before)

@@ -16,8 +16,12 @@ from crowdsim.crowd.arrivals import GivenArrivals
 from crowdsim.dynamics.step import HARMONIC_ANGLE
 from crowdsim.response.statistics import LEAST_FOR_INTERVAL
 from crowdsim.scenario.reader import Scenario
-from crowdsim.study.prepare import SLOWEST_SHARE, Case, resonates
+from crowdsim.scenario.units import GRAVITY
+from crowdsim.study.prepare import EDGE, SLOWEST_SHARE, Case, resonates
 
+WEIGHT_LIKELY = (300.0, 1500.0)  # N, mean of a stream
+PACKED = 6.0  # persons/m2: nobody can stand closer
+USELESS_ERROR = 0.1
 MASS_PER_AREA = (15.0, 1500.0)  # kg/m2 of modal mass at a unit ordinate, common practice
 DAMPING_LIKELY = 0.03
 END_SHARE = 0.02
@@ -100,7 +104,7 @@ def _mode(model: ModalModel, mode: Mode) -> list[Finding]:
         if isinstance(shape, Table) and shape.used == "spline" and shape.excursion() > EXCURSION:
             warn(
                 f"the spline through the {direction} table leaves the range of its values by "
-                f'{100 * shape.excursion():.2g} % of the largest; give more points, or interpolation = "monotone"'
+                f'{100 * shape.excursion():.3g} % of the largest; give more points, or interpolation = "monotone"'
             )
     if not mode.driven:
         warn(
@@ -128,6 +132,16 @@ def _case(scenario: Scenario, case: Case) -> list[Finding]:
             )
         )
         return found
+    if case.choice.expected_error > USELESS_ERROR:
+        found.append(
+            Finding(
+                "error",
+                "run.time_step",
+                f"{case.choice.time_step:.4g} s: expected error of a peak {100 * case.choice.expected_error:.2g} %; "
+                "leave time_step out, or make it smaller",
+            )
+        )
+        return found
     if run.time_step is not None and (angle > HARMONIC_ANGLE or case.choice.expected_error > 2e-3):
         warn(
             "run.time_step",
@@ -152,8 +166,22 @@ def _case(scenario: Scenario, case: Case) -> list[Finding]:
                 f"{100 * stream.outside:.3g} % of the persons have a pace outside {low:g} to {high:g} Hz, where "
                 f"{stream.load.name} holds; their factors are held at the limit",
             )
+        mean = stream.mean_mass * GRAVITY
+        if not WEIGHT_LIKELY[0] <= mean <= WEIGHT_LIKELY[1]:
+            hint = 'kg taken for N? write "75 kg"' if mean < WEIGHT_LIKELY[0] else "grams, or N twice times 9.81?"
+            warn(
+                key,
+                f"mean weight {mean:.4g} N; {WEIGHT_LIKELY[0]:g} to {WEIGHT_LIKELY[1]:g} N is usual ({hint})",
+            )
         arrivals = stream.walkers.arrivals
         if isinstance(arrivals, GivenArrivals):
+            gone = sum(t + case.bare.length * stream.inverse_speed < case.warm_up for t in arrivals.times)
+            if gone:
+                warn(
+                    key,
+                    f"{gone} of {len(arrivals.times)} given arrivals step off before the observed time begins at "
+                    f"{case.warm_up:.4g} s; their times count from time 0, so add the warm-up to them",
+                )
             slowest = case.bare.length / stream.walkers.speed_quantile(SLOWEST_SHARE)
             last = arrivals.times[-1] + slowest
             if last > case.end + 1e-9:
@@ -162,6 +190,12 @@ def _case(scenario: Scenario, case: Case) -> list[Finding]:
                     f"ends at {case.end:.4g} s; the last of {key} may walk until {last:.4g} s; a duration of "
                     f"{math.ceil(last - case.warm_up)} s sees everybody off",
                 )
+    if case.bare.twists and case.bare.width <= 2.0 * EDGE:
+        warn(
+            "deck.width",
+            f"{case.bare.width:g} m: no room for the usual walking lines {EDGE:g} m from the edges, so everybody walks "
+            "on the centre line and drives no twist; give `offset`",
+        )
     given = all(isinstance(s.walkers.arrivals, GivenArrivals) for s in case.streams)
     if not given and case.warm_up < case.warm_up_needed - 0.01:
         warn(
@@ -170,6 +204,15 @@ def _case(scenario: Scenario, case: Case) -> list[Finding]:
             f"({case.warm_up_needed:.4g} s): the deck is not yet in its usual state; leave warm_up out",
         )
     density = case.persons / (case.bare.length * case.bare.width)
+    if density > PACKED:
+        found.append(
+            Finding(
+                "error",
+                f"case {case.name}",
+                f"{case.persons:.4g} persons on {case.bare.length * case.bare.width:.4g} m2, {density:.3g} per m2; "
+                f"more than {PACKED:g} cannot stand there: lower the arrival rate or the number",
+            )
+        )
     if density > CROWDED:
         warn(
             f"case {case.name}",
