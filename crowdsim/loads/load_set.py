@@ -57,9 +57,11 @@ class LoadSet:
         return int(self.factors(np.array([self.pace_range[0]])).shape[1])
 
     def draw(
-        self, pace: Floats, factor_random: np.random.Generator, phase_random: np.random.Generator
+        self, pace: Floats, random: np.random.Generator, phase_random: np.random.Generator
     ) -> tuple[Floats, Floats]:
         """Load factors and phases [person, harmonic] of persons at `pace` [Hz].
+
+        random : of the factors; phase_random : of the phases, a generator of their own
 
         A person's draws do not depend on how many others there are, nor the phases on the set: all
         sets without phases of their own give a person the same ones. A factor that comes out
@@ -74,7 +76,7 @@ class LoadSet:
             phases = np.broadcast_to(np.array(self.phases, dtype=np.float64), factors.shape)
         if self.scatter:
             assert self.spread is not None
-            tries = factor_random.standard_normal((count, _TRIES, harmonics))
+            tries = random.standard_normal((count, _TRIES, harmonics))
             values = factors[:, None, :] + self.spread(held)[:, None, :] * tries
             pick = np.argmax(values > 0.0, axis=1)
             factors = np.abs(np.take_along_axis(values, pick[:, None, :], axis=1)[:, 0, :])

@@ -132,7 +132,7 @@ def _case(scenario: Scenario, case: Case) -> list[Finding]:
             )
         )
         return found
-    if case.choice.expected_error > USELESS_ERROR:
+    if run.time_step is not None and case.choice.expected_error > USELESS_ERROR:
         found.append(
             Finding(
                 "error",
@@ -142,6 +142,12 @@ def _case(scenario: Scenario, case: Case) -> list[Finding]:
             )
         )
         return found
+    if run.time_step is None and case.choice.expected_error > 2e-3:
+        warn(
+            "run.matched",
+            f"{run.integration} as in textbooks at 1/{case.choice.per_second} s: expected error of a peak "
+            f"{100 * case.choice.expected_error:.2g} %; with matched = true (the default) about 0.02 %",
+        )
     if run.time_step is not None and (angle > HARMONIC_ANGLE or case.choice.expected_error > 2e-3):
         warn(
             "run.time_step",

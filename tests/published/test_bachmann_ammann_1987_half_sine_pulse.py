@@ -60,7 +60,7 @@ def test_factors_and_phases_by_quadrature(ratio):
     Complex amplitudes agree to the quadrature's 1e-10, factor and phase together (a factor may be nought).
     """
     factors, phases = load_set("jogging", "half-sine", contact_ratio=ratio).draw(
-        np.array([2.7]), np.random.default_rng(0)
+        np.array([2.7]), np.random.default_rng(0), np.random.default_rng(1000)
     )
     assert factors.shape == (1, PULSE_HARMONICS)
     for n in range(1, PULSE_HARMONICS + 1):

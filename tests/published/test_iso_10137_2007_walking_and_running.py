@@ -56,7 +56,7 @@ def test_ranges(gait, limits):
 @pytest.mark.parametrize(("gait", "harmonics"), [("walking", 5), ("jogging", 3)])
 def test_phases_are_drawn(gait, harmonics):
     """The source gives none: every harmonic of every person has its own, within a turn, none twice."""
-    _, phases = load_set(gait, NAME).draw(np.full(200, 2.2), np.random.default_rng(1))
+    _, phases = load_set(gait, NAME).draw(np.full(200, 2.2), np.random.default_rng(1), np.random.default_rng(1000))
     assert phases.shape == (200, harmonics)
     assert np.unique(phases).size == 200 * harmonics
     assert 0.0 <= phases.min() < 0.1

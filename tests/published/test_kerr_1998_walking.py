@@ -53,7 +53,7 @@ def test_scatter_of_the_first_factor():
     count = 20_000
     pace = np.linspace(1.5, 2.5, count)
     chosen = load_set("walking", NAME, scatter=True)
-    factors, phases = chosen.draw(pace, np.random.default_rng(1998))
+    factors, phases = chosen.draw(pace, np.random.default_rng(1998), np.random.default_rng(1000))
     ratio = factors[:, 0] / load_set("walking", NAME).factors(pace)[:, 0]
     assert abs(ratio.mean() - 1.0) < 4.0 * 0.16 / np.sqrt(count)
     assert abs(ratio.std() - 0.16) < 4.0 * 0.16 / np.sqrt(2 * count)
@@ -64,7 +64,7 @@ def test_scatter_of_the_first_factor():
 
 def test_without_scatter_by_default():
     """Everybody at the same pace has the same factors."""
-    factors, _ = load_set("walking", NAME).draw(np.full(50, 1.9), np.random.default_rng(0))
+    factors, _ = load_set("walking", NAME).draw(np.full(50, 1.9), np.random.default_rng(0), np.random.default_rng(1000))
     assert np.ptp(factors, axis=0).max() == 0.0
 
 
@@ -74,7 +74,9 @@ def test_phases_are_uniform():
     |mean of exp(i phase)|^2 x n is exponential with mean 1: above 12 with probability 6e-6, for six combinations 4e-5.
     """
     count = 20_000
-    _, phases = load_set("walking", NAME).draw(np.full(count, 2.0), np.random.default_rng(5))
+    _, phases = load_set("walking", NAME).draw(
+        np.full(count, 2.0), np.random.default_rng(5), np.random.default_rng(1000)
+    )
     assert phases.min() >= 0.0
     assert phases.max() < 2.0 * np.pi
     one, two, three = phases.T

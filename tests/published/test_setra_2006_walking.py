@@ -27,7 +27,9 @@ def test_factors(pace):
 
 def test_phases():
     """0, -pi/2, -pi/2: the same for everybody."""
-    _, phases = load_set("walking", NAME).draw(np.array([1.8, 2.2]), np.random.default_rng(0))
+    _, phases = load_set("walking", NAME).draw(
+        np.array([1.8, 2.2]), np.random.default_rng(0), np.random.default_rng(1000)
+    )
     np.testing.assert_allclose(phases, [[0.0, -np.pi / 2, -np.pi / 2]] * 2, rtol=1e-12)
 
 

@@ -74,7 +74,9 @@ def test_scatter():
     four standard errors of each of eight moments: a false alarm in 1 of 2000; the seed is fixed.
     """
     count, pace = 20_000, 2.1
-    factors, _ = load_set("walking", MEAN, scatter=True).draw(np.full(count, pace), np.random.default_rng(2001))
+    factors, _ = load_set("walking", MEAN, scatter=True).draw(
+        np.full(count, pace), np.random.default_rng(2001), np.random.default_rng(1000)
+    )
     mean = load_set("walking", MEAN).factors(np.array([pace]))[0]
     assert factors.min() > 0.0
     for k, variation in enumerate((0.17, 0.40, 0.40, 0.40)):

@@ -41,8 +41,10 @@ def test_means_and_deviations_of_the_others(pace):
 def test_held_outside_the_range(pace, limit):
     """1.2 to 2.6 Hz, for mean and scatter alike: the same random numbers give the same factors."""
     chosen = load_set("walking", NAME)
-    out = chosen.draw(np.full(20, pace), np.random.default_rng(3))[0]
-    np.testing.assert_array_equal(out, chosen.draw(np.full(20, limit), np.random.default_rng(3))[0])
+    out = chosen.draw(np.full(20, pace), np.random.default_rng(3), np.random.default_rng(1000))[0]
+    np.testing.assert_array_equal(
+        out, chosen.draw(np.full(20, limit), np.random.default_rng(3), np.random.default_rng(1000))[0]
+    )
 
 
 def test_scatter_by_default():
@@ -52,7 +54,9 @@ def test_scatter_by_default():
     standard errors of each of ten moments: a false alarm in 1 of 1600; the seed is fixed.
     """
     count, pace = 20_000, 1.9
-    factors, phases = load_set("walking", NAME).draw(np.full(count, pace), np.random.default_rng(2007))
+    factors, phases = load_set("walking", NAME).draw(
+        np.full(count, pace), np.random.default_rng(2007), np.random.default_rng(1000)
+    )
     first = load_set("walking", "kerr-1998").factors(np.array([pace]))[0, 0]
     assert factors.min() > 0.0
     for k, (mean, sd) in enumerate(zip((first, *MEANS), (0.16 * first, *DEVIATIONS), strict=True)):
@@ -67,14 +71,14 @@ def test_scatter_by_default():
 def test_without_scatter_on_wish():
     """The means."""
     chosen = load_set("walking", NAME, scatter=False)
-    factors, _ = chosen.draw(np.full(5, 2.0), np.random.default_rng(0))
+    factors, _ = chosen.draw(np.full(5, 2.0), np.random.default_rng(0), np.random.default_rng(1000))
     np.testing.assert_array_equal(factors, chosen.factors(np.full(5, 2.0)))
 
 
 def test_a_persons_draw_does_not_depend_on_the_others():
     """The first ten of a hundred are the ten alone."""
     chosen = load_set("walking", NAME)
-    many = chosen.draw(np.full(100, 1.9), np.random.default_rng(9))
-    few = chosen.draw(np.full(10, 1.9), np.random.default_rng(9))
+    many = chosen.draw(np.full(100, 1.9), np.random.default_rng(9), np.random.default_rng(1000))
+    few = chosen.draw(np.full(10, 1.9), np.random.default_rng(9), np.random.default_rng(1000))
     np.testing.assert_array_equal(many[0][:10], few[0])
     np.testing.assert_array_equal(many[1][:10], few[1])
