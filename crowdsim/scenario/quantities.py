@@ -100,8 +100,10 @@ class RandomPace(Random):
     """Step frequency of a person [Hz]."""
 
     mean: Annotated[Frequency, Field(gt=0, le=6)] | None = None
-    mean_at: str | None = Field(None, description="name of a mode whose frequency, as simulated, is the mean")
-    harmonic: int = Field(1, ge=1, le=8, description="mean_at: the harmonic that meets the mode")
+    mean_at: str | None = Field(
+        None, min_length=1, description="name of a mode whose frequency, as simulated, is the mean"
+    )
+    harmonic: int = Field(1, ge=1, le=8, strict=True, description="mean_at: the harmonic that meets the mode")
     sd: Annotated[Frequency, Field(gt=0)] | None = None
     min: Annotated[Frequency, Field(gt=0)] | None = None
     max: Annotated[Frequency, Field(gt=0, le=6)] | None = None

@@ -29,6 +29,7 @@ from crowdsim.scenario.quantities import (
 
 Gait = Literal["walking", "jogging"]
 HARMONICS_LIMIT = 8
+SMALLEST, LARGEST = 1e-6, 1e6  # ordinates
 
 
 class Head(Table):
@@ -59,8 +60,9 @@ class Shape(Table):
         if self.half_waves is not None:
             if self.s is not None or self.value is not None:
                 raise custom("half_waves beside s and value", "one of the two forms")
-            if self.amplitude == 0.0:
-                raise custom("amplitude is 0", "a number other than 0")
+            if not SMALLEST <= abs(self.amplitude) <= LARGEST:
+                allowed = f"other than 0: {SMALLEST:g} to {LARGEST:g}, or its negative"
+                raise custom(f"amplitude is {self.amplitude:g}", allowed)
             return self
         if self.s is None or self.value is None:
             raise custom("neither half_waves nor a table", "half_waves = 1, or s = [...] and value = [...]")
@@ -72,6 +74,11 @@ class Shape(Table):
             raise custom("s does not grow from point to point", "each s above the one before")
         if not any(self.value):
             raise custom("every value is 0", "at least one other than 0")
+        top = max(abs(v) for v in self.value)
+        if not SMALLEST <= top <= LARGEST:
+            raise custom(f"the largest value is {top:g}", f"{SMALLEST:g} to {LARGEST:g}")
+        if min(b - a for a, b in zip(self.s, self.s[1:], strict=False)) < 1e-6 * (self.s[-1] - self.s[0]):
+            raise custom("two points all but coincide", "at least a millionth of the length between points")
         return self
 
 
@@ -119,7 +126,7 @@ class Load(Table):
     )
     phases: list[Angle] | None = Field(None, description="phase of each harmonic [rad], default 0")
     set: str | None = Field(None, description="name of a published set")
-    scatter: bool | None = Field(None, description="draw each person's factors from the source's scatter")
+    scatter: bool | None = Field(None, strict=True, description="draw each person's factors from the source's scatter")
     contact_ratio: Number | None = Field(None, description="half-sine: contact time x pace")
 
     @model_validator(mode="after")
@@ -190,7 +197,7 @@ class RunTable(Table):
     time_step: Annotated[Time, Field(ge=1e-4, le=0.1)] | None = Field(None, description="1/n s; default chosen")
     warm_up: Annotated[Time, Field(ge=0, le=1e6)] | None = Field(None, description="[s]; default chosen")
     integration: Literal["fox-goodwin", "linear-acceleration", "average-acceleration"] = "fox-goodwin"
-    matched: bool = Field(True, description="stiffness and damping matched to the step")
+    matched: bool = Field(True, strict=True, description="stiffness and damping matched to the step")
 
 
 class ComfortTable(Table):

@@ -27,6 +27,7 @@ KINDS = {
 }
 _PINT_UNIT = {"m/s2": "m/s**2", "1/m2": "1/m**2", "1/h": "1/hour", "": "dimensionless"}
 _NUMBER = re.compile(r"^\s*([+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?)\s*(.*?)\s*$")
+_UNIT = re.compile(r"(?=.*[A-Za-z%])[\w\s%/*^.()°-]+")
 _COUNTED = re.compile(r"\b(persons?|people|pedestrians?|walkers?|joggers?|steps?|cycles?)\b", re.IGNORECASE)
 _ROTATIONS = {"revolutions_per_minute", "revolutions_per_second", "counts_per_second"}
 _SHARES = {"percent", "permille", "dimensionless", "count"}
@@ -70,6 +71,8 @@ def parse(kind: str, value: object, notes: list[str] | None = None) -> float:
         raise UnitError(f"{value!r}: a comma", "a decimal point: " + value.replace(",", ".", 1))
     if not unit:
         raise UnitError(f"{value!r} has no unit", allowed)
+    if not _UNIT.fullmatch(unit):
+        raise UnitError(f"{value!r}: {unit!r} is no unit", allowed)
     if re.search(r"\btons?\b", unit, re.IGNORECASE):
         raise UnitError(f"{value!r}: ton is ambiguous", "write t for 1000 kg, or kg, lb")
     if kind == "mass" and re.fullmatch(r"k?N|MN", unit):

@@ -53,6 +53,7 @@ def assumptions(scenario: Scenario, case: Case) -> list[str]:
     said += scenario.notes
     scheme = f"Newmark, {run.integration}" + (", stiffness and damping matched to the step" if run.matched else "")
     said.append(
-        f"{scheme}; step 1/{case.choice.per_second} s; peaks within about {100 * case.choice.expected_error:.2g} %"
+        f"{scheme}; step 1/{case.choice.per_second} s; a resonant peak is within about "
+        f"{100 * case.choice.expected_error:.2g} %"
     )
     return said

@@ -163,7 +163,7 @@ def prepare(scenario: Scenario, table: CaseTable, seed: int | None = None) -> Ca
         name=table.name, people=table.people, target=table.target, limit=table.limit, bare=bare, model=model,
         driven=driven, streams=streams, added_mass=added, choice=choice, points=points, stations=stations,
         deck_s=deck_s, deck=deck, coefficients=coefficients, recorder=recorder,
-        duration=observed * choice.time_step, warm_up=warm * choice.time_step, warm_up_needed=needed,
+        duration=observed / n, warm_up=warm / n, warm_up_needed=needed,
         window=file.comfort.window, seed=file.run.seed if seed is None else seed,
     )  # fmt: skip
 

@@ -1,6 +1,6 @@
 """Scenarios by the thousand: a hypothesis strategy of valid scenario tables, and a writer of TOML.
 
-The profile is derandomised: every run of the suite sees the same examples. Deadlines are off, because the first
+The tests here are derandomised: every run of the suite sees the same examples. Deadlines are off, because the first
 example compiles the kernels.
 """
 
@@ -11,13 +11,7 @@ from collections.abc import Callable
 from typing import Any
 
 import pytest
-from hypothesis import HealthCheck, settings
 from hypothesis import strategies as st
-
-settings.register_profile(
-    "fixed", deadline=None, derandomize=True, database=None, suppress_health_check=[HealthCheck.too_slow]
-)
-settings.load_profile("fixed")
 
 Tables = dict[str, Any]
 WALKING_SETS = ["bachmann-ammann-1987", "kerr-1998", "young-2001-mean", "young-2001-design", "iso-10137-2007",
