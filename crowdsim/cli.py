@@ -32,7 +32,7 @@ Workers = Annotated[
 ]
 Json = Annotated[bool, typer.Option("--json", help="Print the summary for programs.")]
 Quiet = Annotated[bool, typer.Option("--quiet", "-q", help="Print nothing but errors.")]
-Verbose = Annotated[bool, typer.Option("--verbose", "-v", help="Say more.")]
+Verbose = Annotated[bool, typer.Option("--verbose", "-v", help="Say more: accuracy, places, run time.")]
 
 
 @app.command()

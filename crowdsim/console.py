@@ -220,6 +220,13 @@ class Console:
             f"{plan.realisations:,} realisations of {span(case.duration)}: "
             f"{plan.realisations * steps:.2g} person-steps, about {span(seconds)} with {default_workers()} workers"
         )
+        if self.verbose:
+            self.out.print(
+                f"Errors: peak by parabola {c.peak_error:.1e}, integration {c.history_error:.1e}, ordinates between "
+                f"table values {c.ordinate_error:.1e}, force between samples {c.sampling_error:.1e}"
+            )
+            rows = [[p.name, number(p.s), number(p.e), p.direction] for p in case.points]
+            self._table("Recorded", [("at", "l"), ("s, m", "r"), ("e, m", "r"), ("direction", "l")], rows)
         from crowdsim.study.assumptions import assumptions
 
         self._list("Assumed", assumptions(plan.scenario, case))
@@ -277,6 +284,7 @@ class RunProgress(Progress):
         self.console = console
         self.bar: Bar | None = None
         self.peaks: list[float] = []
+        self._name, self._done, self._steps = "", 0, 0
         self._shown = 0.0
         self._begun = 0.0
         if console.err.is_terminal and not console.quiet:
@@ -307,11 +315,14 @@ class RunProgress(Progress):
 
     def case(self, name: str, realisations: int, person_steps: float) -> None:
         self.peaks = []
+        self._name, self._done, self._steps = name, 0, 0
         self._begun = time.monotonic()
         if self.bar:
             self.task = self.bar.add_task(name, total=realisations, rate="", value="")
 
     def row(self, row: Row) -> None:
+        self._done += 1
+        self._steps += row.person_steps
         if not self.bar:
             return
         insort(self.peaks, float(row.response.peak.max()))
@@ -327,5 +338,9 @@ class RunProgress(Progress):
         )
 
     def case_done(self) -> None:
+        if self.console.verbose:
+            elapsed = max(time.monotonic() - self._begun, 1e-9)
+            rate = f"{self._steps / elapsed:.3g} person-steps a second"
+            self.console.note(f"{self._name}: {self._done} realisations in {span(elapsed)}, {rate}")
         if self.bar:
             self.bar.update(self.task, completed=len(self.peaks))
