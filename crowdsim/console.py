@@ -212,7 +212,7 @@ class Console:
         c = case.choice
         self.out.print(
             f"Time step 1/{c.per_second} s, force sampled at every {_ordinal(c.factor)}step, "
-            f"expected error of a resonant peak {100 * c.expected_error:.2g} %; warm-up {span(case.warm_up)}"
+            f"expected error of a resonant peak {100 * c.expected_error:.3g} %; warm-up {span(case.warm_up)}"
         )
         steps = plan.person_steps(case)
         seconds = run_time(plan, case, default_workers())

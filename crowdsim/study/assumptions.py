@@ -54,6 +54,6 @@ def assumptions(scenario: Scenario, case: Case) -> list[str]:
     scheme = f"Newmark, {run.integration}" + (", stiffness and damping matched to the step" if run.matched else "")
     said.append(
         f"{scheme}; step 1/{case.choice.per_second} s; a resonant peak is within about "
-        f"{100 * case.choice.expected_error:.2g} %"
+        f"{100 * case.choice.expected_error:.3g} %"
     )
     return said

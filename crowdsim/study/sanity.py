@@ -137,7 +137,7 @@ def _case(scenario: Scenario, case: Case) -> list[Finding]:
             Finding(
                 "error",
                 "run.time_step",
-                f"{case.choice.time_step:.4g} s: expected error of a peak {100 * case.choice.expected_error:.2g} %; "
+                f"{case.choice.time_step:.4g} s: expected error of a peak {100 * case.choice.expected_error:.3g} %; "
                 "leave time_step out, or make it smaller",
             )
         )
@@ -146,13 +146,13 @@ def _case(scenario: Scenario, case: Case) -> list[Finding]:
         warn(
             "run.matched",
             f"{run.integration} as in textbooks at 1/{case.choice.per_second} s: expected error of a peak "
-            f"{100 * case.choice.expected_error:.2g} %; with matched = true (the default) about 0.02 %",
+            f"{100 * case.choice.expected_error:.3g} %; with matched = true (the default) about 0.02 %",
         )
     if run.time_step is not None and (angle > HARMONIC_ANGLE or case.choice.expected_error > 2e-3):
         warn(
             "run.time_step",
             f"{case.choice.time_step:.4g} s: omega dt = {angle:.2g} at the highest mode, expected error "
-            f"{100 * case.choice.expected_error:.2g} %; leave time_step out for about 0.02 %",
+            f"{100 * case.choice.expected_error:.3g} %; leave time_step out for about 0.02 %",
         )
     if not any(m.driven for m in case.model.modes):
         found.append(Finding("error", "mode", "no mode has a vertical or twist ordinate: no force would drive any"))

@@ -424,7 +424,7 @@ def measure_workers(quick: bool, cores: list[int]) -> Measured | None:
     together = apart = 0.0
     before = os.sched_getaffinity(0)
     pin(set(pair))
-    for _ in range(1 if quick else 4):
+    for _ in range(1 if quick else 6):
         apart = max(apart, processes_rate(count, pair, quick))
         begin = time.perf_counter()
         for _ in rows(case, 2 * count, 2, Halt()):

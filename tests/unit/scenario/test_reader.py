@@ -5,6 +5,7 @@ The messages are what an engineer works with; a test that only saw the exception
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable
 from pathlib import Path
 
@@ -267,6 +268,50 @@ def test_units_in_tables_and_plain_values_are_understood(changed: Callable[..., 
     assert (stream.offset.distribution, stream.offset.mean) == ("fixed", 0.5)
     assert stream.forward_share == 0.5
     assert file.run.duration == 900.0
+
+
+@pytest.mark.parametrize("phases", ["[nan]", "[inf]", '["1.5"]', "[true]", '["2 kg"]'])
+def test_phases_are_angles_and_nothing_else(changed: Callable[..., str], phases: str) -> None:
+    (problem,) = problems(changed((LOAD, f"load = {{ harmonics = [0.4], phases = {phases} }}")))
+    assert (problem.key, problem.line) == ("stream[0].load.phases[0]", 19)
+
+
+def test_phases_take_units(changed: Callable[..., str]) -> None:
+    load = parse_scenario(changed((LOAD, 'load = { harmonics = [0.4], phases = ["90 deg"] }'))).file.stream[0].load
+    assert load is not None
+    assert load.phases == [pytest.approx(0.5 * math.pi, rel=1e-15)]
+
+
+@pytest.mark.parametrize(
+    ("old", "new"),
+    [
+        ("realisations = 200", "realisations = true"),
+        ("realisations = 200", 'realisations = "200"'),
+        (SHAPE, '{ half_waves = "1" }'),
+        (ARRIVAL, '{ constant = "40" }'),
+    ],
+)
+def test_a_count_is_a_whole_number_and_no_text_or_switch(changed: Callable[..., str], old: str, new: str) -> None:
+    (problem,) = problems(changed((old, new)))
+    assert "given" in problem.what
+    assert "integer" in problem.allowed
+
+
+@pytest.mark.parametrize(
+    ("changes", "key"),
+    [
+        ([(PACE, "pace = { mean = 0.001, sd = 0.1 }")], "stream[0].pace"),
+        ([(LOAD, "weight = { mean = 5, sd = 1 }")], "stream[0].weight"),
+        ([(LOAD, "offset = { mean = 2.0, sd = 0.1, min = -1, max = 3 }")], "stream[0].offset"),
+        ([(LOAD, "offset = { mean = 1.55, sd = 0.5, min = 1.5999 }")], "stream[0].offset"),
+    ],
+)
+def test_a_distribution_outside_what_people_do_is_a_problem_of_its_key(
+    changed: Callable[..., str], changes: list[tuple[str, str]], key: str
+) -> None:
+    (problem,) = problems(changed(*changes))
+    assert problem.key == key
+    assert "of the probability" in problem.what
 
 
 def test_a_weight_written_as_mass_is_noted_once(changed: Callable[..., str]) -> None:

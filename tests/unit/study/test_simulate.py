@@ -17,6 +17,7 @@ from crowdsim.study.jobs import run_realisation
 from crowdsim.study.progress import Progress
 from crowdsim.study.simulate import AROUND_PEAK, LONG_RECORD, plan, simulate, simulate_to
 
+PACE = "pace = { mean = 1.87, sd = 0.186, min = 1.3, max = 2.6 }"
 SHORT = ("duration = 900.0", "duration = 240.0")
 TWO_CASES = ("", '[[case]]\nname = "day"\n[[case]]\nname = "people"\npeople = "mass"\n')
 
@@ -123,6 +124,17 @@ def test_of_a_long_record_the_surroundings_of_the_peak_are_kept(scenario: Callab
         at = history.time[np.argmax(np.abs(history.acceleration[:, 0]))]
         assert at == pytest.approx(peak_time, abs=1.5 * step)
         assert np.abs(history.acceleration).max() == pytest.approx(case.peak[number, 0], rel=4.6e-4)  # vertex, as above
+
+
+def test_a_record_shorter_than_the_comfort_window_has_no_windows(scenario: Callable[..., Scenario]) -> None:
+    (case,) = simulate(scenario(("duration = 900.0", "duration = 120.0")), realisations=2).cases
+    assert case.window_peak.shape == (2, 0, 1)
+    assert np.all(case.peak > 0.0)
+
+
+def test_nobody_walks_faster_than_the_kernel_reaches(scenario: Callable[..., Scenario]) -> None:
+    with pytest.raises(InputError, match="m/s"):
+        plan(scenario((PACE, "pace = 6\nstep_length = 2.9"), ("length = 48.0", "length = 500.0")))
 
 
 def test_a_stop_keeps_the_rows_that_are_finished(scenario: Callable[..., Scenario], tmp_path: Path) -> None:
