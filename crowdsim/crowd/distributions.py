@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 from dataclasses import dataclass
 from functools import cached_property
 from statistics import NormalDist
@@ -133,7 +134,7 @@ class Distribution:
 
     def draw(self, generator: np.random.Generator, count: int) -> Floats:
         """`count` values. The i-th is the i-th accepted draw, whatever the count."""
-        return Draws(self, generator).take(count)
+        return Draws(self, lambda: generator).take(count)
 
     def text(self, unit: str = "") -> str:
         """As a person writes it: `normal, mean 1.87, sd 0.186, 1.3 to 2.6 Hz`."""
@@ -155,24 +156,26 @@ class Distribution:
 class Draws:
     """Values of a distribution one after the other: two `take`s give what one gives."""
 
-    def __init__(self, distribution: Distribution, generator: np.random.Generator):
-        self._of, self._generator = distribution, generator
+    def __init__(self, distribution: Distribution, generator: Callable[[], np.random.Generator]):
+        # a fixed quantity needs no generator, and to make one takes longer than to draw
+        self._of = distribution
+        self._random = None if distribution.kind == "fixed" else generator()
         self._left = np.zeros(0)
 
     def take(self, count: int) -> Floats:
         """The next `count` values."""
         of = self._of
-        if of.kind == "fixed":
+        if self._random is None:
             return np.full(count, of.mean)
         if of.kind == "uniform":
-            return self._generator.uniform(of.minimum, of.maximum, count)
+            return self._random.uniform(of.minimum, of.maximum, count)
         kept, size = [self._left], self._left.size
         while size < count:
             trial = int((count - size) / of.probability * 1.1) + 8
             if of.kind == "normal":
-                x = self._generator.normal(of.mean, of.sd, trial)
+                x = self._random.normal(of.mean, of.sd, trial)
             else:
-                x = self._generator.lognormal(*of.log_parameters, trial)
+                x = self._random.lognormal(*of.log_parameters, trial)
             kept.append(x[(x >= of.minimum) & (x <= of.maximum)])
             size += kept[-1].size
         values = np.concatenate(kept)

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import hashlib
 from dataclasses import dataclass
+from functools import cache, partial
 
 import numpy as np
 from numpy.typing import NDArray
@@ -87,6 +88,7 @@ class People:
         return self.speed / self.pace
 
 
+@cache
 def stream_id(name: str) -> int:
     """A fixed number for the stream's name."""
     return int.from_bytes(hashlib.sha256(name.encode()).digest()[:4], "big")
@@ -114,13 +116,13 @@ class PeopleSource:
 
         self.walkers, self._length = walkers, length
         self._random = random
-        self._direction = random("direction")
+        self._direction = random("direction") if walkers.forward_share < 1.0 else None
         second = walkers.speed if walkers.speed is not None else walkers.step_length
         phase = walkers.phase or Distribution("uniform", minimum=0.0, maximum=2.0 * np.pi)
         assert second is not None
         named = {"pace": walkers.pace, "length": second, "weight": walkers.weight, "offset": walkers.offset,
                  "phase": phase}  # fmt: skip
-        self._draws = {name: Draws(of, random(name)) for name, of in named.items()}
+        self._draws = {name: Draws(of, partial(random, name)) for name, of in named.items()}
         self._poisson = (
             PoissonTimes(walkers.arrivals.rate, random("arrival"))
             if isinstance(walkers.arrivals, PoissonArrivals)
@@ -142,7 +144,7 @@ class PeopleSource:
             assert isinstance(walkers.arrivals, GivenArrivals)
             times = np.array(walkers.arrivals.times, dtype=np.float64)
             enter = times[(times >= self._until) & (times < until)]
-        if walkers.forward_share >= 1.0:
+        if self._direction is None:
             forward = np.ones(enter.size, dtype=bool)
         else:
             forward = self._direction.uniform(size=enter.size) < walkers.forward_share

@@ -126,6 +126,26 @@ class NotFiniteError(ArithmeticError):
     """The motion of a realisation grew beyond the numbers."""
 
 
+class Workspace:
+    """Work arrays that one thread uses for one realisation after the other.
+
+    Fresh arrays of this size would be mapped and unmapped by the system every time, which stalls
+    the other threads of the process.
+    """
+
+    def __init__(self) -> None:
+        self._arrays: dict[str, Floats] = {}
+
+    def zeros(self, name: str, *shape: int) -> Floats:
+        """The array called `name`, all nought, from the start of a cache line."""
+        count = int(np.prod(shape))
+        if name not in self._arrays or self._arrays[name].size < count:
+            self._arrays[name] = aligned(count)
+        view = self._arrays[name][:count].reshape(shape)
+        view[...] = 0.0
+        return view
+
+
 def aligned(count: int) -> Floats:
     """Zeros that begin on a cache line."""
     room = np.zeros(count + 8)
@@ -195,6 +215,7 @@ class Realisation:
     history : steps [from, to) whose acceleration is kept
     factor : steps in a sample of the force (1, 2 or 4), see `step.choose`
     block : samples worked on at a time, a multiple of 512; changes no bit
+    workspace : used by this realisation alone until its response is there
 
     Raises ValueError for arrays that do not fit each other.
     """
@@ -210,6 +231,7 @@ class Realisation:
         control: Control | None = None,
         factor: int = 4,
         block: int = BLOCK,
+        workspace: Workspace | None = None,
     ):
         modes = deck.modes
         if step.shape != (modes, 11):
@@ -241,11 +263,13 @@ class Realisation:
         self._step, self._points = padded(step, 0), padded(recorder.points, 1)
         self._stations, self._weights = padded(recorder.stations, 1), between_weights(factor)
         self._history, self._history_start = np.zeros((max(stop - begin, 0), points)), begin
-        self._force, self._work = aligned(-(-modes // ROWS) * ROWS * STRIDE), aligned(WORK)
-        self._rows, self._between = np.zeros((pair, TAPS + block)), np.zeros((pair, factor - 1, block))
-        self._motion, self._state = np.zeros((pair, CARRY + steps)), np.zeros((pair, 3))
-        self._y = np.zeros((points, recorder.window + 2 + steps))
-        self._scratch, self._tops = aligned(SCRATCH_SIZE), np.zeros((kernels.PARTS + 1, pair))
+        zeros = (workspace or Workspace()).zeros
+        self._zeros = zeros
+        self._force, self._work = zeros("force", -(-modes // ROWS) * ROWS * STRIDE), zeros("work", WORK)
+        self._rows, self._between = zeros("rows", pair, TAPS + block), zeros("between", pair, factor - 1, block)
+        self._motion, self._state = zeros("motion", pair, CARRY + steps), np.zeros((pair, 3))
+        self._y = zeros("y", points, recorder.window + 2 + steps)
+        self._scratch, self._tops = zeros("scratch", SCRATCH_SIZE), np.zeros((kernels.PARTS + 1, pair))
         self._peaks, self._squares = np.zeros((points, recorder.segments + 1)), np.zeros((points, SUMS))
         self._running, self._best = np.zeros((points, 2)), np.zeros((points, 3))
         self._envelope = np.zeros(recorder.stations.shape[0])
@@ -268,7 +292,7 @@ class Realisation:
             self.deck.modes, self._step, self._points, self._stations,
             self.sample, until, r.total, r.warm, r.window, r.segment, self.block, self._weights,
             self._history, self._history_start,
-            self._force, aligned(_slots(rows, self.sample, until, self.block) * SLOT), self._work,
+            self._force, self._zeros("table", _slots(rows, self.sample, until, self.block) * SLOT), self._work,
             self._rows, self._between, self._motion, self._state, self._y, self._scratch, self._tops,
             self._peaks, self._squares, self._running, self._best, self._envelope,
             self.control.stop, self.control.progress,
@@ -283,6 +307,8 @@ class Realisation:
         if self.sample < self.samples:
             raise ValueError(f"at sample {self.sample} of {self.samples}")
         r = self.recorder
+        if not np.all(np.isfinite(self._envelope)) or not np.all(np.isfinite(self._best)):
+            raise NotFiniteError("the motion is not finite")
         windows, rest = self._peaks[:, :-1].T.copy(), self._peaks[:, -1]
         if r.segments and (r.total - 1 - r.warm) % r.segment == 0:
             windows[-1] = np.maximum(windows[-1], rest)  # the last step of all ends the last window

@@ -96,7 +96,10 @@ def open_file(path: str | Path) -> Any:
     if file.attrs.get("format") != FORMAT:
         file.close()
         raise ResultsError(f"{path}: not a results file of crowdsim")
-    version = int(file.attrs["format_version"])
+    version = int(file.attrs.get("format_version", 0))
+    if version < 1 or "cases" not in file:
+        file.close()
+        raise ResultsError(f"{path}: a damaged results file: format_version or cases are missing")
     if version > FORMAT_VERSION:
         file.close()
         raise ResultsError(

@@ -6,6 +6,7 @@ import re
 
 Path = tuple[str | int, ...]
 _HEADER = re.compile(r"^\s*(\[\[?)\s*([^\[\]]+?)\s*\]\]?\s*(?:#.*)?$")
+_QUOTES = re.compile(r'"""|' + "'''")
 _KEY = re.compile(r"^\s*([A-Za-z0-9_.\"'-]+)\s*=")
 
 
@@ -17,7 +18,13 @@ def key_lines(text: str) -> dict[Path, int]:
     lines: dict[Path, int] = {}
     counts: dict[Path, int] = {}
     table: Path = ()
+    within = ""  # the quotes of a string that runs over several lines
     for number, line in enumerate(text.splitlines(), start=1):
+        before = within
+        for quotes in _QUOTES.findall(line):
+            within = "" if within == quotes else within or quotes
+        if before:
+            continue
         header = _HEADER.match(line)
         if header:
             table = ()
@@ -26,6 +33,7 @@ def key_lines(text: str) -> dict[Path, int]:
                 table = (*table, part)
                 last = i == len(parts) - 1
                 if last and header.group(1) == "[[":
+                    lines.setdefault(table, number)
                     counts[table] = counts.get(table, -1) + 1
                     table = (*table, counts[table])
                 elif table in counts:

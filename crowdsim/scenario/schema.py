@@ -88,7 +88,7 @@ class ModeTable(Table):
     name: str = Field(min_length=1)
     frequency: Annotated[Frequency, Field(gt=0, le=100)] = Field(description="[Hz]")
     damping: Annotated[Fraction, Field(gt=0)] = Field(description="fraction of critical")
-    modal_mass: Annotated[Mass, Field(gt=0)] = Field(description="[kg]")
+    modal_mass: Annotated[Mass, Field(ge=1e-3, le=1e12)] = Field(description="[kg]")
     vertical: Shape | None = None
     lateral: Shape | None = None
     longitudinal: Shape | None = None
@@ -241,6 +241,8 @@ def _tidied(node: Any) -> Any:
     if not isinstance(node, dict):
         return node
     out = {k: _tidied(v) for k, v in node.items() if not (k == "default" and v is None)}
+    if isinstance(out.get("default"), dict):
+        out["default"] = {k: v for k, v in out["default"].items() if v is not None}
     if isinstance(out.get("title"), str):
         del out["title"]
     bounds = {_BOUNDS[k]: out.pop(k) for k in tuple(out) if k in _BOUNDS}

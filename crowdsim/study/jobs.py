@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import threading
 from dataclasses import dataclass, fields
 from typing import Any
 
@@ -14,6 +15,7 @@ from crowdsim.dynamics.realisation import Control, Passages, Response
 from crowdsim.study.prepare import Case, Stream
 
 Floats = NDArray[np.float64]
+_THREAD = threading.local()
 SPAN = 2**18  # samples for which persons are drawn at a time: memory does not grow with the duration
 
 
@@ -121,6 +123,14 @@ def joined(parts: list[Passages]) -> Passages:
     )
 
 
+def _workspace() -> realisation.Workspace:
+    """That of this thread."""
+    if not hasattr(_THREAD, "workspace"):
+        _THREAD.workspace = realisation.Workspace()
+    found: realisation.Workspace = _THREAD.workspace
+    return found
+
+
 def _later(passages: Passages, time: float) -> Passages:
     keep = passages.leave > time
     return Passages(**{f.name: getattr(passages, f.name)[keep] for f in fields(Passages)})
@@ -138,7 +148,7 @@ def run_realisation(
     sample = case.choice.time_step * case.choice.factor
     whole = realisation.Realisation(
         case.deck, case.coefficients, case.recorder, case.choice.time_step,
-        history=history, control=control, factor=case.choice.factor, block=block,
+        history=history, control=control, factor=case.choice.factor, block=block, workspace=_workspace(),
     )  # fmt: skip
     walks = [Walks(case, stream, number) for stream in case.streams]
     here: list[Passages] = []

@@ -102,7 +102,7 @@ def test_draws_have_the_distribution(of: Distribution) -> None:
 @pytest.mark.parametrize("pieces", [(1000,), (1, 999), (300, 0, 500, 200), (10,) * 100])
 def test_the_ith_draw_is_the_same_whatever_the_pieces(of: Distribution, pieces: tuple[int, ...]) -> None:
     whole = of.draw(np.random.default_rng(3), 1500)
-    draws = Draws(of, np.random.default_rng(3))
+    draws = Draws(of, lambda: np.random.default_rng(3))
     np.testing.assert_array_equal(np.concatenate([draws.take(n) for n in pieces]), whole[:1000])
 
 
