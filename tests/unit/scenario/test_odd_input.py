@@ -71,7 +71,7 @@ def test_a_fast_tail_of_walkers_is_no_traceback(changed):
 @pytest.mark.parametrize("phases", ["[nan]", "[inf]", '["1.5"]', "[true]"])
 def test_phases_are_numbers(changed, phases):
     with pytest.raises(InputError):
-        parse_scenario(changed((LOAD, "load = { harmonics = [0.4], phases = %s }" % phases)))
+        parse_scenario(changed((LOAD, f"load = {{ harmonics = [0.4], phases = {phases} }}")))
 
 
 def test_phases_take_units(changed):
