@@ -50,7 +50,7 @@ def simulate(
 ) -> None:
     """Simulate every case of a scenario and write the results file."""
     from crowdsim.console import Console, RunProgress
-    from crowdsim.errors import ResultsError
+    from crowdsim.errors import InterruptedRunError, ResultsError
     from crowdsim.results.summary import summarise
     from crowdsim.scenario.reader import read_scenario
     from crowdsim.study.simulate import plan, simulate_to
@@ -60,8 +60,13 @@ def simulate(
         raise ResultsError(f"{out}: is the scenario itself; --out takes the name of a results file")
     signal.signal(signal.SIGTERM, signal.default_int_handler)  # ends like Ctrl-C: what is finished is kept
     prepared = plan(read_scenario(scenario), case=case, realisations=realisations, seed=seed)
-    with RunProgress(console) as progress:
-        simulate_to(prepared, out, workers=workers, progress=progress, force=force)
+    try:
+        with RunProgress(console) as progress:
+            simulate_to(prepared, out, workers=workers, progress=progress, force=force)
+    except InterruptedRunError as stopped:
+        if stopped.kept:
+            console.summary(summarise(stopped.kept, prepared.scenario.title))
+        raise
     console.summary(summarise(out, prepared.scenario.title))
 
 

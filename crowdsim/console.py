@@ -31,6 +31,7 @@ CAUTION = (
 _PER_PERSON_STEP = 0.5e-9
 _PER_STEP = 12e-9
 _START = 1.0
+WIDE = 110  # columns; a narrower terminal gets fewer columns, never a cut number
 FEW = 20  # realisations below which 95 % is the largest of all
 
 
@@ -71,6 +72,10 @@ def _headline(case: CaseSummary, deck: DeckSummary) -> str:
         if deck.direction != "vertical":
             return f"No {deck.direction} response: no force acts in that direction in this version."
         return "No vertical response: nobody stepped on in time, or everybody walks where no mode moves."
+    if deck.direction != "vertical":
+        return (
+            f"The {deck.direction} response below comes from vertical forces alone: far too small, and no assessment."
+        )
     where = f"It is largest at s = {number(deck.s)} m, e = {number(deck.e)} m."
     if case.realisations < FEW:
         spans = f"{case.realisations} spans" if case.realisations > 1 else "one span"
@@ -107,8 +112,11 @@ class Console:
 
     def _table(self, title: str, columns: list[tuple[str, str]], rows: list[list[str]]) -> None:
         table = Table(title=title, title_justify="left", title_style="bold", box=None, pad_edge=False, padding=(0, 1))
-        for name, side in columns:
-            table.add_column(name, justify="right" if side == "r" else "left", no_wrap=side != "l")
+        for i, (name, side) in enumerate(columns):
+            whole = max([len(name), *(len(row[i]) for row in rows)]) if side != "l" else None
+            table.add_column(
+                name, justify="right" if side == "r" else "left", no_wrap=side != "l", min_width=whole, overflow="fold"
+            )
         for row in rows:
             table.add_row(*row)
         self.out.print(table)
@@ -131,14 +139,17 @@ class Console:
         if self.quiet:
             return
         self.out.print(summary.title, style="bold")
-        for case in summary.cases:
-            self._case(case)
         self._list("Findings", summary.findings)
+        shared = [a for a in summary.cases[0].assumptions if all(a in c.assumptions for c in summary.cases)]
+        for case in summary.cases:
+            self._case(case, [a for a in case.assumptions if a not in shared])
+        self.out.print()
+        self._list("Assumed" if len(summary.cases) == 1 else "Assumed in every case", shared)
         self.out.print()
         self.out.print(textwrap.fill(CAUTION, self.out.width))
         self.out.print(f"Results: {summary.file} (seed {summary.seed}, crowdsim {summary.version})", soft_wrap=True)
 
-    def _case(self, case: CaseSummary) -> None:
+    def _case(self, case: CaseSummary, own: list[str]) -> None:
         self.out.print()
         warm = f"each after a warm-up of {span(case.warm_up)}" if case.warm_up else "each from rest"
         self.out.print(
@@ -154,6 +165,9 @@ class Console:
         if mass:
             shifted = ", ".join(f"{m['name']} at {number(m['frequency'], 4)} Hz" for m in mass)
             self.out.print(f"With the people's mass: {shifted}.")
+        asked = f"class {case.target}" if case.target else f"at most {number(case.limit)} m/s2" if case.limit else ""
+        if asked:
+            self.out.print(f"Asked: {asked}; kept with the results, no verdict in this version.")
         for deck in case.deck:
             self.out.print(textwrap.fill(_headline(case, deck), self.out.width))
         rows = []
@@ -167,8 +181,13 @@ class Console:
         columns = [("at", "l"), ("s, m", "r"), ("e, m", "r"), ("direction", "k"), ("mean", "r"), ("sd", "r"),
                    ("median", "r"), ("95 % value", "r"), ("its 95 % interval", "r"), ("largest", "r"),
                    ("RMS, mean", "r"), ("1 s RMS, 95 %", "r")]  # fmt: skip
-        self._table("Peak acceleration, m/s2, and RMS", columns, rows)
-        self._list("Assumed", case.assumptions)
+        if self.out.width < WIDE:
+            keep = [
+                i for i, (name, _) in enumerate(columns) if name not in ("sd", "median", "RMS, mean", "1 s RMS, 95 %")
+            ]
+            columns, rows = [columns[i] for i in keep], [[row[i] for i in keep] for row in rows]
+        self._table("Peak acceleration of all modes together, m/s2, where each mode moves most", columns, rows)
+        self._list("Assumed", own)
 
     def check(self, plan: Plan) -> None:
         """A scenario as understood."""

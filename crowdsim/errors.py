@@ -61,4 +61,8 @@ class RunError(CrowdsimError):
 
 
 class InterruptedRunError(CrowdsimError):
-    """The user stopped a run; what was finished is kept."""
+    """The user stopped a run; what was finished is in the file `kept`, if any."""
+
+    def __init__(self, message: str, kept: str | None = None):
+        super().__init__(message)
+        self.kept = kept

@@ -35,7 +35,7 @@ class History:
     acceleration: Floats
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, repr=False)
 class CaseResults:
     """One case.
 
@@ -64,8 +64,11 @@ class CaseResults:
         """How many."""
         return int(self.peak.shape[0])
 
+    def __repr__(self) -> str:
+        return f"<case {self.name!r}: {self.realisations} realisations, points {', '.join(self.points.name)}>"
 
-@dataclass(frozen=True)
+
+@dataclass(frozen=True, repr=False)
 class Results:
     """A results file."""
 
@@ -82,7 +85,10 @@ class Results:
         for c in self.cases:
             if c.name == name:
                 return c
-        raise KeyError(name)
+        raise KeyError(f"no case {name!r}; there are {', '.join(repr(c.name) for c in self.cases)}")
+
+    def __repr__(self) -> str:
+        return f"<crowdsim results: {', '.join(map(repr, self.cases))}>"
 
 
 def open_file(path: str | Path) -> Any:
@@ -121,7 +127,7 @@ def open_results(path: str | Path) -> Results:
             version=str(file.attrs["crowdsim_version"]),
             findings=tuple(json.loads(file.attrs["findings"])),
             fingerprint=json.loads(file.attrs["fingerprint"]),
-            run=dict(file["run"].attrs) if "run" in file else {},
+            run={k: v.item() if hasattr(v, "item") else v for k, v in file["run"].attrs.items()},
             cases=tuple(_case(file["cases"][k]) for k in sorted(file["cases"], key=int)),
         )
 

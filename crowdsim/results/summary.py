@@ -51,6 +51,8 @@ class CaseSummary:
     duration: float
     warm_up: float
     time_step: float
+    target: str | None
+    limit: float | None
     persons_on_deck: float
     crossings_mean: float
     points: tuple[PointSummary, ...]
@@ -100,6 +102,8 @@ def _case(group: Any) -> CaseSummary:
         duration=float(group.attrs["duration"]),
         warm_up=float(group.attrs["warm_up"]),
         time_step=float(group.attrs["time_step"]),
+        target=str(group.attrs["target"]) if "target" in group.attrs else None,
+        limit=float(group.attrs["limit"]) if "limit" in group.attrs else None,
         persons_on_deck=float(group.attrs["persons_on_deck"]),
         crossings_mean=float(np.mean(rows["crossings"][()])),
         points=tuple(

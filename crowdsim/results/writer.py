@@ -191,17 +191,19 @@ class ResultsWriter:
 
     def __init__(self, path: Path, scenario: str, seed: int, findings: Sequence[str], *, force: bool = False):
         self.path = path
-        if path.exists() and not force:
-            raise ResultsError(f"{path}: exists already; --force overwrites it, or choose another --out")
         if path.is_dir():
             raise ResultsError(f"{path}: is a folder; --out takes the name of a file")
+        if path.exists() and not force:
+            raise ResultsError(f"{path}: exists already; --force overwrites it, or choose another --out")
         if not path.parent.is_dir():
             raise ResultsError(f"{path}: there is no folder {path.parent}; make it first")
         self.temporary = path.with_name(f".{path.name}.{os.getpid()}.part")
         try:
             self.file = h5py.File(self.temporary, "w", libver=("v110", "v110"))
         except OSError as error:
-            raise ResultsError(f"{path}: cannot be written: {error}") from None
+            raise ResultsError(
+                f"{path}: cannot be written in {path.parent.resolve()} ({error.strerror or 'not possible'})"
+            ) from None
         self.file.attrs.update(
             {
                 "format": FORMAT,
@@ -224,8 +226,14 @@ class ResultsWriter:
         """Takes the last case out again: nothing of it was finished."""
         del self._cases[str(len(self._cases) - 1)]
 
-    def finish(self, facts: dict[str, Any]) -> None:
-        """Adds the facts of this run, closes the file and moves it into place."""
+    def finish(self, facts: dict[str, Any], *, complete: bool = True) -> Path:
+        """Adds the facts of this run, closes the file, moves it into place and says where.
+
+        A run that was stopped never takes the place of a file that is there: it goes beside it.
+        """
+        place = self.path
+        if not complete and place.exists():
+            place = place.with_name(f"{place.stem}.partial{place.suffix}")
         run = self.file.create_group("run")
         run.attrs.update(
             {
@@ -233,12 +241,14 @@ class ResultsWriter:
                 "host": socket.gethostname(),
                 "python": platform.python_version(),
                 "resumed": False,
+                "complete": complete,
                 **facts,
             }
         )
         self.file.close()
-        os.replace(self.temporary, self.path)
+        os.replace(self.temporary, place)
         self._done = True
+        return place
 
     def __enter__(self) -> ResultsWriter:
         return self

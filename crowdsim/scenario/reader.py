@@ -68,7 +68,7 @@ def parse_scenario(text: str, source: str = "scenario") -> Scenario:
     try:
         raw = tomllib.loads(text)
     except tomllib.TOMLDecodeError as error:
-        raise InputError(source, [Problem("", f"not TOML: {error}")]) from None
+        raise InputError(source, [_syntax(str(error), text)]) from None
     except RecursionError:
         raise InputError(source, [Problem("", "tables nested too deeply")]) from None
     notes: list[str] = []
@@ -84,12 +84,36 @@ def parse_scenario(text: str, source: str = "scenario") -> Scenario:
     return Scenario(source, text, file, tuple(dict.fromkeys(notes)))
 
 
+def _syntax(message: str, text: str) -> Problem:
+    """A syntax error with its line and, for the usual slips, what to write."""
+    found = re.search(r"\(at line (\d+), column (\d+)\)", message)
+    line = int(found.group(1)) if found else None
+    written = text.splitlines()[line - 1] if line and line <= len(text.splitlines()) else ""
+    hint = ""
+    if re.search(r"=\s*[\d.]+\s*[A-Za-z%]", written):
+        hint = 'a quantity with a unit stands in quotes: "48 m"'
+    elif re.search(r"(?<![\d.])\.\d", written):
+        hint = "a nought before the decimal point: 0.7, not .7"
+    elif "overwrite" in message or "twice" in message:
+        hint = "a key or table stands there twice"
+    elif re.search(r"\d,\d", written) and "[" not in written:
+        hint = "a decimal point, not a comma"
+    return Problem("", f"not TOML: {message}", hint, line)
+
+
 def _problem(error: Any, raw: dict[str, Any], lines: dict[Any, int]) -> Problem:
     path = _written_path(error["loc"], raw)
     line = line_of(lines, path)
     kind, given, context = error["type"], error.get("input"), error.get("ctx", {})
     if kind == "missing":
-        return Problem(key_text(path), "missing", _about(path), line)
+        needed = {
+            "deck": "[deck] with length and width",
+            "mode": "at least one [[mode]]",
+            "stream": "at least one [[stream]]",
+        }
+        return Problem(key_text(path), "missing", needed.get(str(path[-1])) or _about(path), line)
+    if kind == "list_type" and len(path) == 1:
+        return Problem(key_text(path), "one table where several may stand", f"two brackets: [[{path[0]}]]", line)
     if kind == "extra_forbidden":
         if path[0] in LATER:
             return Problem(key_text(path[:1]), f"{LATER[path[0]]}: not in this version", "leave it out for now", line)
@@ -101,6 +125,11 @@ def _problem(error: Any, raw: dict[str, Any], lines: dict[Any, int]) -> Problem:
         return Problem(key_text(path), context["what"], context["allowed"], line)
     bounds = {"greater_than": "above {gt}", "greater_than_equal": "at least {ge}", "less_than": "below {lt}",
               "less_than_equal": "at most {le}"}  # fmt: skip
+    if kind == "less_than_equal" and path[-1] == "forward_share":
+        return Problem(key_text(path), f"{_short(given)} given", f'at most 1: a share; or "{given} %" in quotes', line)
+    if kind == "less_than_equal" and "pace" in path:
+        hint = f'at most 6: steps per second; or "{given} per minute" in quotes'
+        return Problem(key_text(path), f"{_short(given)} given", hint, line)
     if kind in bounds:
         return Problem(key_text(path), f"{_short(given)} given", bounds[kind].format(**context), line)
     if kind == "literal_error":

@@ -24,6 +24,7 @@ PACKED = 6.0  # persons/m2: nobody can stand closer
 USELESS_ERROR = 0.1
 MASS_PER_AREA = (15.0, 1500.0)  # kg/m2 of modal mass at a unit ordinate, common practice
 DAMPING_LIKELY = 0.03
+DAMPING_LEAST = 0.0005
 END_SHARE = 0.02
 EXCURSION = 0.02
 OUTSIDE_SHARE = 0.01
@@ -75,6 +76,11 @@ def _mode(model: ModalModel, mode: Mode) -> list[Finding]:
             f"damping {100 * mode.damping:.3g} % of critical; footbridges without dampers have 0.2 to 2 %, and "
             f'above {100 * DAMPING_LIKELY:g} % a percentage may stand for a fraction: 0.5 % is 0.005 or "0.5 %"'
         )
+    if mode.damping < DAMPING_LEAST:
+        warn(
+            f"damping {100 * mode.damping:.3g} % of critical; footbridges have 0.2 to 2 %, and lower values make the "
+            "warm-up very long: mend the number"
+        )
     top = max((abs(model.largest(mode, d)[2]) for d in mode.directions), default=0.0)
     if top > 0.0:
         per_area = mode.modal_mass / top**2 / (model.length * model.width)
@@ -106,10 +112,12 @@ def _mode(model: ModalModel, mode: Mode) -> list[Finding]:
                 f"the spline through the {direction} table leaves the range of its values by "
                 f'{100 * shape.excursion():.3g} % of the largest; give more points, or interpolation = "monotone"'
             )
-    if not mode.driven:
+    sideways = [d for d in ("lateral", "longitudinal") if getattr(mode, d) is not None]
+    if sideways:
         warn(
-            f"moves the deck only {' and '.join(mode.directions)}: this version has vertical forces alone, so its "
-            "response is nought here, which says nothing of the bridge"
+            f"moves the deck in the {' and '.join(sideways)} direction, and this version has vertical forces alone: "
+            "what it gives in that direction is far too small (nought without a vertical or twist ordinate) and says "
+            "nothing of the bridge"
         )
     return found
 
@@ -231,7 +239,8 @@ def _case(scenario: Scenario, case: Case) -> list[Finding]:
             f'{density:.2g} persons/m2 and people = "none": their mass (and the damping that walking bodies add) is '
             'left out; people = "mass" adds the mass',
         )
-    if case.duration < case.window - 1e-9:
+    asked = "comfort" in scenario.file.model_fields_set or case.target is not None
+    if asked and case.duration < case.window - 1e-9:
         warn(
             "comfort.window",
             f"{case.window:g} s is longer than the observed {case.duration:g} s: no whole window fits; make duration "

@@ -140,23 +140,23 @@ def simulate_to(
             if not complete:
                 if writer.count == 0:
                     results.drop_last_case()
-                if finished:
-                    results.finish(_facts(begun, workers, plan, complete=False))
-                of = f"{writer.count} of {plan.realisations} written"
+                place = results.finish(_facts(begun, workers, plan), complete=False) if finished else None
                 where = f" of case {case.name!r}" if len(plan.cases) > 1 else ""
                 left = len(plan.cases) - number - 1
                 rest = f"; {left} case{'s' if left > 1 else ''} not begun" if left else ""
-                kept = "" if finished else "; no file was made"
-                raise InterruptedRunError(f"stopped: {of}{where}{rest}{kept}")
-        results.finish(_facts(begun, workers, plan, complete=True))
+                kept = f" in {place}, marked incomplete" if place else "; no file was made"
+                raise InterruptedRunError(
+                    f"stopped: {writer.count} of {plan.realisations} written{where}{rest}{kept}",
+                    str(place) if place else None,
+                )
+        results.finish(_facts(begun, workers, plan))
 
 
-def _facts(begun: float, workers: int, plan: Plan, *, complete: bool) -> dict[str, Any]:
+def _facts(begun: float, workers: int, plan: Plan) -> dict[str, Any]:
     return {
         "elapsed": time.perf_counter() - begun,
         "workers": workers,
         "asked": plan.realisations,
-        "complete": complete,
         "source": plan.scenario.source,
     }
 

@@ -53,7 +53,7 @@ SINGLE = {
     ),
     "a lateral mode": (
         [("", LATERAL)],
-        "warning", "mode L1", ["only lateral", "vertical forces alone"],
+        "warning", "mode L1", ["in the lateral direction", "vertical forces alone", "far too small"],
     ),
     "no mode that could be driven": (
         [(SHAPE, "lateral = { half_waves = 1 }")], "error", "mode", ["no mode has a vertical or twist ordinate"],
@@ -95,7 +95,7 @@ SINGLE = {
         ['0.25 persons/m2 and people = "none"', 'people = "mass" adds the mass'],
     ),
     "no whole comfort window": (
-        [("duration = 900.0", "duration = 200.0")], "warning", "comfort.window",
+        [("duration = 900.0", "duration = 200.0"), ("", "[comfort]\nwindow = 240.0\n")], "warning", "comfort.window",
         ["240 s is longer than the observed 200 s", "make duration at least as long"],
     ),
     "too few realisations": (
