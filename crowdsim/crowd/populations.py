@@ -10,7 +10,7 @@ from dataclasses import dataclass
 
 from crowdsim.crowd.distributions import Distribution, fixed, normal
 
-GRAVITY = 9.81
+GRAVITY = 9.81  # m/s2, by which a mass is a weight everywhere in the program
 
 
 @dataclass(frozen=True)

@@ -7,7 +7,7 @@ import re
 from functools import cache
 from typing import Any
 
-GRAVITY = 9.81
+from crowdsim.crowd.populations import GRAVITY
 
 # kind: (unit in force, example)
 KINDS = {

@@ -13,7 +13,7 @@ from crowdsim.bridge.ordinates import HalfWaves, Ordinate, Table
 from crowdsim.crowd.arrivals import Arrivals, ConstantNumber, GivenArrivals, PoissonArrivals
 from crowdsim.crowd.distributions import Distribution, fixed
 from crowdsim.crowd.people import Walkers
-from crowdsim.crowd.populations import DEFAULT_POPULATION, POPULATIONS
+from crowdsim.crowd.populations import DEFAULT_POPULATION, GRAVITY, POPULATIONS
 from crowdsim.dynamics import newmark, step
 from crowdsim.dynamics.realisation import CELLS, Deck, Recorder, deck_table, table_cells
 from crowdsim.errors import InputError, Problem
@@ -22,7 +22,6 @@ from crowdsim.loads import sets
 from crowdsim.scenario.quantities import FLOORS
 from crowdsim.scenario.reader import Scenario
 from crowdsim.scenario.schema import CaseTable, Shape, StreamTable
-from crowdsim.scenario.units import GRAVITY
 
 Floats = NDArray[np.float64]
 STATIONS = 96
@@ -118,7 +117,7 @@ def prepare(scenario: Scenario, table: CaseTable, seed: int | None = None) -> Ca
     file = scenario.file
     bare = modal_model(scenario)
     chosen = [s for s in file.stream if table.streams is None or s.name in table.streams]
-    warm_needed_by = "given times" if all(s.arrival.times for s in chosen) else "stream"
+    timed = all(s.arrival.times for s in chosen)
     model, added = bare, {m.name: 0.0 for m in bare.modes}
     for _ in range(50):
         streams = tuple(_stream(s, model, file.run.duration, scenario.source) for s in chosen)
@@ -133,7 +132,7 @@ def prepare(scenario: Scenario, table: CaseTable, seed: int | None = None) -> Ca
     choice, deck = _step(scenario, bare, driven, streams)
     needed = _warm_up(bare, driven, streams)
     given = file.run.warm_up
-    warm_up = given if given is not None else 0.0 if warm_needed_by == "given times" else needed
+    warm_up = given if given is not None else 0.0 if timed else needed
     n = choice.per_second
     warm = math.ceil(warm_up * n - 1e-9)
     observed = max(round(file.run.duration * n), n)

@@ -13,13 +13,13 @@ import numpy as np
 from crowdsim.bridge.modal import ModalModel, Mode
 from crowdsim.bridge.ordinates import Table
 from crowdsim.crowd.arrivals import GivenArrivals
+from crowdsim.crowd.populations import GRAVITY
 from crowdsim.dynamics.step import HARMONIC_ANGLE
 from crowdsim.response.statistics import LEAST_FOR_INTERVAL
 from crowdsim.scenario.reader import Scenario
-from crowdsim.scenario.units import GRAVITY
 from crowdsim.study.prepare import EDGE, SLOWEST_SHARE, Case, resonates
 
-WEIGHT_LIKELY = (300.0, 1500.0)  # N, mean of a stream
+WEIGHT_LIKELY = (300.0, 1500.0)  # N, mean of a stream, common practice
 PACKED = 6.0  # persons/m2: nobody can stand closer
 USELESS_ERROR = 0.1
 MASS_PER_AREA = (15.0, 1500.0)  # kg/m2 of modal mass at a unit ordinate, common practice
@@ -28,8 +28,8 @@ DAMPING_LEAST = 0.0005
 END_SHARE = 0.02
 EXCURSION = 0.02
 OUTSIDE_SHARE = 0.01
-CROWDED = 0.3
-EFFECT_OF_PEOPLE = 0.2
+CROWDED = 0.3  # persons/m2, from where people slow each other down, common practice
+EFFECT_OF_PEOPLE = 0.2  # persons/m2, this program's choice
 
 
 @dataclass(frozen=True)
