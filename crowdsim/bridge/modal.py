@@ -142,16 +142,25 @@ class ModalModel:
             for (s, e, direction), names in found.items()
         )
 
-    def mean_square(self, mode: Mode, offset_mean: float = 0.0, offset_square: float = 0.0) -> float:
-        """Mean over the deck of the squared ordinates of all directions, persons spread uniformly in s.
+    def mean_square(
+        self,
+        mode: Mode,
+        offset_mean: float = 0.0,
+        offset_square: float = 0.0,
+        directions: tuple[str, ...] = DIRECTIONS,
+    ) -> float:
+        """Mean over the deck of the squared ordinates of `directions`, persons spread uniformly in s.
 
         offset_mean, offset_square: E[e] [m], E[e^2] [m2] of the persons' offsets.
         """
-        v = mode.vertical(self.fine) if mode.vertical is not None else np.zeros(_FINE + 1)
-        t = mode.twist(self.fine) if mode.twist is not None else np.zeros(_FINE + 1)
-        square = v * v + 2.0 * offset_mean * v * t + offset_square * t * t
+        square = np.zeros(_FINE + 1)
+        if "vertical" in directions:
+            v = mode.vertical(self.fine) if mode.vertical is not None else square
+            t = mode.twist(self.fine) if mode.twist is not None else square
+            square = v * v + 2.0 * offset_mean * v * t + offset_square * t * t
         for direction in ("lateral", "longitudinal"):
-            square = square + mode.ordinate(direction, self.fine) ** 2
+            if direction in directions:
+                square = square + mode.ordinate(direction, self.fine) ** 2
         weights = np.full(_FINE + 1, 2.0)
         weights[1::2] = 4.0
         weights[[0, -1]] = 1.0

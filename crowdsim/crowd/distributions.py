@@ -102,6 +102,21 @@ class Distribution:
             x = np.array([math.exp(m + s * v) for v in z.ravel()]).reshape(z.shape)
         return np.asarray(np.clip(x, self.minimum, self.maximum), dtype=np.float64)
 
+    def density(self, x: float) -> float:
+        """Probability density at x of the truncated distribution. Raises ValueError for a fixed quantity."""
+        if self.kind == "fixed":
+            raise ValueError("a fixed quantity has no density")
+        if not self.minimum <= x <= self.maximum:
+            return 0.0
+        if self.kind == "uniform":
+            return 1.0 / (self.maximum - self.minimum)
+        if self.kind == "normal":
+            return _STANDARD.pdf((x - self.mean) / self.sd) / (self.sd * self.probability)
+        if x <= 0.0:
+            return 0.0
+        m, s = self.log_parameters
+        return _STANDARD.pdf((math.log(x) - m) / s) / (x * s * self.probability)
+
     @cached_property
     def nodes(self) -> tuple[Floats, Floats]:
         """Values and weights with which sums stand for expectations (Gauss-Legendre in the probability)."""

@@ -774,25 +774,85 @@ def envelope_block(motion, shapes, envelope, begin, end, first, y, tops):
                 for m in range(modes):
                     bound += abs(shape[m]) * tops[number, m]
                 if bound > envelope[s]:
-                    envelope[s] = _station(y, shape, motion, part, stop, first, envelope[s])
+                    early = 1 if part > first else 0
+                    envelope[s] = _station(y, shape, motion, part, stop, early, first, envelope[s])
                 part = stop
                 number += 1
         outer = limit
 
 
 @_compiled()
-def _station(y, shape, motion, part, stop, first, best):
-    """The larger of `best` and the largest |acceleration| over steps part..stop at one station."""
+def deck_block(motion, shapes, ends, peaks, begin, end, first, segment, y, tops):
+    """Largest |acceleration| anywhere on the deck in each comfort window, over steps begin..end.
+
+    ends: [direction] one past its last station; peaks: [direction, window], the rest of the record
+    last. Skips like `envelope_block`; a vertex belongs to the window of its middle step, as at a point.
+    tops: [PARTS + 1, mode] scratch.
+    """
+    modes = shapes.shape[1]
+    last = peaks.shape[1] - 1
+    part = begin
+    while part < end:
+        k = min((part - first) // segment, last)
+        stop = min((part // ENVELOPE_PART + 1) * ENVELOPE_PART, end)
+        if k < last:
+            stop = min(stop, first + (k + 1) * segment)
+        border = part > first and part == first + k * segment
+        if border:
+            _close_window(motion, shapes, ends, peaks, part, first, k - 1)
+        early = 1 if part > first and not border else 0
+        least = part - 1 if border else first
+        for m in range(modes):
+            a, jump = _largest(motion[m], CARRY + part - early, stop - part + early)
+            tops[0, m] = a + 0.125 * jump
+        station = 0
+        for d in range(ends.size):
+            top = peaks[d, k]
+            while station < ends[d]:
+                bound = 0.0
+                for m in range(modes):
+                    bound += abs(shapes[station, m]) * tops[0, m]
+                if bound > top:
+                    top = _station(y, shapes[station], motion, part, stop, early, least, top)
+                station += 1
+            peaks[d, k] = top
+        part = stop
+
+
+@_compiled()
+def _close_window(motion, shapes, ends, peaks, part, first, k):
+    """Vertices whose middle is the step before `part`, the last of window k: it needed the next sample."""
+    if part - 1 <= first:
+        return
+    station = 0
+    for d in range(ends.size):
+        while station < ends[d]:
+            a = b = c = 0.0
+            for m in range(shapes.shape[1]):
+                f = shapes[station, m]
+                a += f * motion[m, part]
+                b += f * motion[m, part + 1]
+                c += f * motion[m, part + 2]
+            peaks[d, k] = max(peaks[d, k], _vertex(a, b, c))
+            station += 1
+
+
+@_compiled()
+def _station(y, shape, motion, part, stop, early, least, best):
+    """The larger of `best` and the largest |acceleration| over steps part - early..stop at one station.
+
+    Vertices count whose middle step is after `least`, from the step before `part` on.
+    """
     count = stop - part + CARRY
     _combine(y, 0, count, shape, motion, part)
-    at = CARRY - 1 if part > first else CARRY
+    at = CARRY - early
     top, jump = _largest(y, at, count - at)
     if top + 0.125 * jump <= best:
         return best
     best = max(best, top)
-    least = best - 0.125 * jump
+    below = best - 0.125 * jump
     for i in range(CARRY, count):
-        if abs(y[i - 1]) >= least and part + i - 3 > first:
+        if abs(y[i - 1]) >= below and part + i - 3 > least:
             best = max(best, _vertex(y[i - 2], y[i - 1], y[i]))
     return best
 
@@ -802,7 +862,7 @@ def realisation(
     persons, numbers, loads, many, ordinates, twist, modes, step, points, stations,
     first_sample, last_sample, total, warm, window, segment, block, weights, history, history_start,
     force, table, work, rows, between, motion, state, y, scratch, tops,
-    peaks, squares, running, best, envelope, stop, progress,
+    peaks, squares, running, best, envelope, ends, deck_peaks, stop, progress,
 ):  # fmt: skip
     """Samples first..last of one realisation in blocks: force, motion, measures.
 
@@ -845,6 +905,7 @@ def realisation(
                 )  # fmt: skip
         if begin < end:
             envelope_block(motion, stations, envelope, begin, end, warm - zero, scratch[64:], tops)
+            deck_block(motion, stations, ends, deck_peaks, begin, end, warm - zero, segment, scratch[64:], tops)
         for m in range(modes):
             if not math.isfinite(state[m, 0]):
                 return NOT_FINITE

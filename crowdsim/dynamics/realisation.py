@@ -79,9 +79,10 @@ class Deck:
 class Recorder:
     """Where and how the response is measured.
 
-    points : [point, mode]; stations : [station, mode] ordinates
+    points : [point, mode]; stations : [station, mode] ordinates, a direction after the other
     total : steps, step 0 at time 0; warm : first observed step
     window : steps of the running RMS; segment : steps of the comfort window
+    directions : stations in each direction; empty: all in one
     """
 
     points: Floats
@@ -90,6 +91,7 @@ class Recorder:
     warm: int
     window: int
     segment: int
+    directions: tuple[int, ...] = ()
 
     @property
     def segments(self) -> int:
@@ -102,7 +104,8 @@ class Response:
     """What one realisation gives.
 
     peak, rms, running_rms_max, peak_time : [point] (m/s2; s from time 0)
-    window_peak : [window, point]; envelope : [station]; history : [step, point] or empty
+    window_peak : [window, point]; envelope : [station]; deck_window_peak : [window, direction], the
+    largest anywhere; history : [step, point] or empty
     """
 
     peak: Floats
@@ -111,6 +114,7 @@ class Response:
     peak_time: Floats
     window_peak: Floats
     envelope: Floats
+    deck_window_peak: Floats
     history: Floats
 
 
@@ -239,6 +243,9 @@ class Realisation:
         for name in ("points", "stations"):
             if getattr(recorder, name).shape[1:] != (modes,):
                 raise ValueError(f"{name}: one ordinate for each of the {modes} driven modes")
+        directions = recorder.directions or (recorder.stations.shape[0],)
+        if sum(directions) != recorder.stations.shape[0]:
+            raise ValueError(f"directions: {directions} for {recorder.stations.shape[0]} stations")
         if block % RUN or not 0 < block <= BLOCK_LIMIT:
             raise ValueError(f"block: a multiple of {RUN} up to {BLOCK_LIMIT}, not {block}")
         if not 1 <= modes <= kernels.MODES_LIMIT:
@@ -273,6 +280,8 @@ class Realisation:
         self._peaks, self._squares = np.zeros((points, recorder.segments + 1)), np.zeros((points, SUMS))
         self._running, self._best = np.zeros((points, 2)), np.zeros((points, 3))
         self._envelope = np.zeros(recorder.stations.shape[0])
+        self._ends = np.cumsum(np.array(directions, dtype=np.int64))
+        self._deck = np.zeros((len(directions), recorder.segments + 1))
 
     def advance(self, passages: Passages, until: int) -> bool:
         """Goes on to sample `until`, a multiple of `BLOCK_LIMIT` or the last.
@@ -295,7 +304,7 @@ class Realisation:
             self._force, self._zeros("table", _slots(rows, self.sample, until, self.block) * SLOT), self._work,
             self._rows, self._between, self._motion, self._state, self._y, self._scratch, self._tops,
             self._peaks, self._squares, self._running, self._best, self._envelope,
-            self.control.stop, self.control.progress,
+            self._ends, self._deck, self.control.stop, self.control.progress,
         )  # fmt: skip
         if status == kernels.NOT_FINITE:
             raise NotFiniteError("the motion is not finite")
@@ -309,16 +318,21 @@ class Realisation:
         r = self.recorder
         if not np.all(np.isfinite(self._envelope)) or not np.all(np.isfinite(self._best)):
             raise NotFiniteError("the motion is not finite")
-        windows, rest = self._peaks[:, :-1].T.copy(), self._peaks[:, -1]
-        if r.segments and (r.total - 1 - r.warm) % r.segment == 0:
-            windows[-1] = np.maximum(windows[-1], rest)  # the last step of all ends the last window
+
+        def windows(peaks: Floats) -> Floats:
+            whole, rest = peaks[:, :-1].T.copy(), peaks[:, -1]
+            if r.segments and (r.total - 1 - r.warm) % r.segment == 0:
+                whole[-1] = np.maximum(whole[-1], rest)  # the last step of all ends the last window
+            return whole
+
         return Response(
             peak=self._best[:, 0].copy(),
             rms=np.sqrt((self._squares.sum(axis=1) - self._best[:, 2]) / (r.total - 1 - r.warm)),
             running_rms_max=np.sqrt(self._running[:, 1] / r.window),
             peak_time=(self._best[:, 1] + r.warm) * self.time_step,
-            window_peak=windows,
+            window_peak=windows(self._peaks),
             envelope=self._envelope,
+            deck_window_peak=windows(self._deck),
             history=self._history,
         )
 

@@ -40,12 +40,16 @@ def interval_ranks(count: int, share: float, confidence: float = 0.95) -> tuple[
 
 @dataclass(frozen=True)
 class Percentile:
-    """A percentile and its interval; `low` and `high` are None where the sample is too small."""
+    """A percentile and its interval; `low` and `high` are None where the sample is too small.
+
+    effective : number of independent values that the interval rests on
+    """
 
     share: float
     value: float
     low: float | None
     high: float | None
+    effective: float
 
 
 @dataclass(frozen=True)
@@ -67,8 +71,8 @@ def percentile(values: Floats, share: float = 0.95, confidence: float = 0.95) ->
     ranks = interval_ranks(count, share, confidence)
     value = float(ordered[percentile_rank(count, share) - 1])
     if ranks is None:
-        return Percentile(share, value, None, None)
-    return Percentile(share, value, float(ordered[ranks[0] - 1]), float(ordered[ranks[1] - 1]))
+        return Percentile(share, value, None, None, float(count))
+    return Percentile(share, value, float(ordered[ranks[0] - 1]), float(ordered[ranks[1] - 1]), float(count))
 
 
 def describe(values: Floats) -> Distribution1D:

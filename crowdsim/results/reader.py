@@ -42,6 +42,7 @@ class CaseResults:
     peak, rms, running_rms_max, peak_time : [realisation, point]
     window_peak : [realisation, window, point]; crossings : [realisation]
     envelope : by direction, [realisation, e, s]; deck_s, deck_e [m]
+    deck_window_peak : by direction, [realisation, window], the largest anywhere on the deck
     """
 
     name: str
@@ -57,6 +58,7 @@ class CaseResults:
     deck_s: Floats
     deck_e: Floats
     envelope: dict[str, Floats]
+    deck_window_peak: dict[str, Floats]
     histories: dict[int, History] = field(default_factory=dict)
 
     @property
@@ -153,6 +155,7 @@ def _case(group: Any) -> CaseResults:
         deck_s=deck["s"][()],
         deck_e=deck["e"][()],
         envelope={d: deck[d]["peak_envelope"][()] for d in directions},
+        deck_window_peak={d: deck[d]["window_peak"][()] for d in directions},
         histories={
             int(k): History(h["time"][()], h["acceleration"][()]) for k, h in group.get("histories", {}).items()
         },

@@ -10,7 +10,9 @@ from typing import Any
 import h5py
 import numpy as np
 
-from crowdsim.response.statistics import Distribution1D, describe, percentile_rank
+from crowdsim.response.statistics import Distribution1D, Percentile, describe, percentile_rank
+from crowdsim.response.windows import Proportion, window_exceedance, window_percentile
+from crowdsim.results.judgement import LOADED, Judgement, asked, judge
 from crowdsim.results.reader import _strings, open_file
 
 _SLAB = 2_000_000  # numbers of the envelope in memory at a time
@@ -18,7 +20,11 @@ _SLAB = 2_000_000  # numbers of the envelope in memory at a time
 
 @dataclass(frozen=True)
 class PointSummary:
-    """Response at one recorded point."""
+    """Response at one recorded point.
+
+    peak, rms, running_rms_max : over the whole record; window_peak: in a comfort window
+    exceedance, window_exceedance : of the limit that the case asks for, None without one
+    """
 
     name: str
     s: float
@@ -27,6 +33,9 @@ class PointSummary:
     peak: Distribution1D
     rms: Distribution1D
     running_rms_max: Distribution1D
+    window_peak: Percentile | None
+    exceedance: Proportion | None
+    window_exceedance: Proportion | None
 
 
 @dataclass(frozen=True)
@@ -34,12 +43,14 @@ class DeckSummary:
     """The largest peak anywhere on the deck in one direction.
 
     s, e : where the 95 % value of the peak is largest
+    judgement : class and verdict; None in a direction in which no force acts
     """
 
     direction: str
     s: float
     e: float
     peak: Distribution1D
+    judgement: Judgement | None
 
 
 @dataclass(frozen=True)
@@ -92,13 +103,12 @@ def summarise(path: str | Path, title: str) -> Summary:
 
 def _case(group: Any) -> CaseSummary:
     rows, place = group["realisations"], group["points"]
-    peak, rms, running = (rows[k][()] for k in ("peak", "rms", "running_rms_max"))
     names, directions = _strings(place["name"]), _strings(place["direction"])
     modes = group["modes"]
     keys = ("frequency", "damping", "modal_mass", "added_mass")
     return CaseSummary(
         name=str(group.attrs["name"]),
-        realisations=int(peak.shape[0]),
+        realisations=int(rows["peak"].shape[0]),
         duration=float(group.attrs["duration"]),
         warm_up=float(group.attrs["warm_up"]),
         time_step=float(group.attrs["time_step"]),
@@ -106,15 +116,9 @@ def _case(group: Any) -> CaseSummary:
         limit=float(group.attrs["limit"]) if "limit" in group.attrs else None,
         persons_on_deck=float(group.attrs["persons_on_deck"]),
         crossings_mean=float(np.mean(rows["crossings"][()])),
-        points=tuple(
-            PointSummary(
-                names[i], float(place["s"][i]), float(place["e"][i]), directions[i],
-                describe(peak[:, i]), describe(rms[:, i]), describe(running[:, i]),
-            )
-            for i in range(len(names))
-        ),
+        points=tuple(_point(group, i, names[i], directions[i]) for i in range(len(names))),
         deck=tuple(
-            _deck(d, group["deck"]) for d in dict.fromkeys(directions) if isinstance(group["deck"].get(d), h5py.Group)
+            _deck(d, group) for d in dict.fromkeys(directions) if isinstance(group["deck"].get(d), h5py.Group)
         ),
         modes=tuple(
             {"name": n, **{k: float(modes[k][i]) for k in keys}} for i, n in enumerate(_strings(modes["name"]))
@@ -123,7 +127,26 @@ def _case(group: Any) -> CaseSummary:
     )  # fmt: skip
 
 
-def _deck(direction: str, deck: Any) -> DeckSummary:
+def _point(group: Any, i: int, name: str, direction: str) -> PointSummary:
+    rows, place = group["realisations"], group["points"]
+    peak, windows = rows["peak"][:, i], rows["window_peak"][:, :, i]
+    limit = asked(dict(group.attrs), direction).limit if direction in LOADED else None
+    return PointSummary(
+        name=name,
+        s=float(place["s"][i]),
+        e=float(place["e"][i]),
+        direction=direction,
+        peak=describe(peak),
+        rms=describe(rows["rms"][:, i]),
+        running_rms_max=describe(rows["running_rms_max"][:, i]),
+        window_peak=window_percentile(windows) if windows.size else None,
+        exceedance=None if limit is None else window_exceedance(peak, limit),
+        window_exceedance=window_exceedance(windows, limit) if limit is not None and windows.size else None,
+    )
+
+
+def _deck(direction: str, group: Any) -> DeckSummary:
+    deck = group["deck"]
     data = deck[direction]["peak_envelope"]
     count, across, along = data.shape
     largest = np.zeros(count)
@@ -138,4 +161,7 @@ def _deck(direction: str, deck: Any) -> DeckSummary:
             j = int(np.argmax(values))
             if values[j] > best:
                 best, where = float(values[j]), (e, s + j)
-    return DeckSummary(direction, float(deck["s"][where[1]]), float(deck["e"][where[0]]), describe(largest))
+    judged = None
+    if direction in LOADED:
+        judged = judge(dict(group.attrs), direction, deck[direction]["window_peak"][()], largest)
+    return DeckSummary(direction, float(deck["s"][where[1]]), float(deck["e"][where[0]]), describe(largest), judged)

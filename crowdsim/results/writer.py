@@ -42,6 +42,7 @@ class CaseHead:
     duration: float
     window: float
     windows: int
+    criterion: str
     people: str
     persons: float
     points: Sequence[tuple[str, float, float, str]]
@@ -95,7 +96,7 @@ class CaseWriter:
         windows = head.windows
         attributes: dict[str, Any] = {
             "name": head.name, "time_step": head.time_step, "warm_up": head.warm_up, "duration": head.duration,
-            "window": head.window, "people": head.people, "persons_on_deck": head.persons,
+            "window": head.window, "criterion": head.criterion, "people": head.people, "persons_on_deck": head.persons,
             "assumptions": json.dumps(list(head.assumptions)), "step": json.dumps(head.step),
         }  # fmt: skip
         if head.target is not None:
@@ -130,10 +131,9 @@ class CaseWriter:
         self._windows = self._growing(rows, "window_peak", (windows, points), _ACCELERATION)
         self._crossings = self._growing(rows, "crossings", (), "1", np.int64)
         self._shape = (len(head.deck_e), head.deck_s.size)
-        self._envelopes = [
-            self._growing(deck.create_group(direction), "peak_envelope", self._shape, _ACCELERATION)
-            for direction in head.directions
-        ]
+        groups = [deck.create_group(direction) for direction in head.directions]
+        self._envelopes = [self._growing(g, "peak_envelope", self._shape, _ACCELERATION) for g in groups]
+        self._deck_windows = [self._growing(g, "window_peak", (windows,), _ACCELERATION) for g in groups]
 
     @staticmethod
     def _growing(group: Any, name: str, shape: tuple[int, ...], units: str, kind: Any = np.float64) -> Any:
@@ -153,9 +153,9 @@ class CaseWriter:
         """Adds the row of the next realisation."""
         self._rows.append(
             (response.peak, response.rms, response.running_rms_max, response.peak_time, response.window_peak,
-             crossings, response.envelope)
+             crossings, response.envelope, response.deck_window_peak)
         )  # fmt: skip
-        self._bytes += response.window_peak.nbytes + response.envelope.nbytes
+        self._bytes += response.window_peak.nbytes + response.envelope.nbytes + response.deck_window_peak.nbytes
         if len(self._rows) >= _BUFFER or self._bytes > _BUFFER_BYTES:
             self.flush()
 
@@ -171,9 +171,12 @@ class CaseWriter:
             data.resize(end, axis=0)
             data[begin:end] = np.stack(values) if np.ndim(values[0]) else np.array(values)
         whole = envelopes.reshape(envelopes.shape[0], len(self._envelopes), *self._shape)
-        for i, data in enumerate(self._envelopes):
+        anywhere = np.stack(columns[7])
+        for i, (data, windows) in enumerate(zip(self._envelopes, self._deck_windows, strict=True)):
             data.resize(end, axis=0)
             data[begin:end] = whole[:, i]
+            windows.resize(end, axis=0)
+            windows[begin:end] = anywhere[:, :, i]
         self.count = end
         self._rows.clear()
         self._bytes = 0

@@ -7,17 +7,13 @@ from collections.abc import Iterable, Iterator
 from typing import Any
 
 from crowdsim.crowd.populations import POPULATIONS
+from crowdsim.guides.catalogue import CRITERIA
 from crowdsim.loads import sets
 from crowdsim.scenario.quantities import FLOORS, Random
 from crowdsim.scenario.schema import ScenarioFile, StreamTable
 
 Found = tuple[tuple[str | int, ...], str, str]
 
-CLASSES = {
-    "eur-23984": ("CL1", "CL2", "CL3"),
-    "setra-2006": ("range 1", "range 2", "range 3"),
-    "en-1990": (),
-}
 LARGEST_DAMPING = 0.2
 FASTEST = 12.0  # m/s
 
@@ -141,7 +137,7 @@ def _load(stream: StreamTable, key: tuple[str | int, ...]) -> Iterator[Found]:
 
 def _cases(file: ScenarioFile) -> Iterator[Found]:
     streams = [s.name for s in file.stream]
-    classes = CLASSES[file.comfort.criterion]
+    classes = CRITERIA[file.comfort.criterion].reachable
     for i, case in enumerate(file.case):
         for j, name in enumerate(case.streams or []):
             if name not in streams:

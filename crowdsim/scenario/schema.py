@@ -28,6 +28,7 @@ from crowdsim.scenario.quantities import (
 )
 
 Gait = Literal["walking", "jogging"]
+Construction = Literal["reinforced concrete", "prestressed concrete", "composite", "steel", "timber", "stress ribbon"]
 HARMONICS_LIMIT = 8
 SMALLEST, LARGEST = 1e-6, 1e6  # ordinates
 
@@ -44,6 +45,7 @@ class DeckTable(Table):
 
     length: Annotated[Length, Field(gt=0, le=5000)] = Field(description="along the walking line [m]")
     width: Annotated[Length, Field(gt=0, le=100)] = Field(description="clear walking width [m]")
+    construction: Construction | None = Field(None, description="says which tabled damping a sensitivity study tries")
 
 
 class Shape(Table):
@@ -204,7 +206,9 @@ class ComfortTable(Table):
     """Whose classes speak, and of what time."""
 
     criterion: Literal["eur-23984", "setra-2006", "en-1990"] = "eur-23984"
-    window: Annotated[Time, Field(ge=1)] = Field(240.0, description="the time that a class speaks of [s]")
+    window: Annotated[Time, Field(ge=1)] | None = Field(
+        None, description="the time that a class speaks of [s]; default 240 s, or the whole record if shorter"
+    )
 
 
 class ScenarioFile(Table):

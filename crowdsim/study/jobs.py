@@ -12,7 +12,8 @@ from numpy.typing import NDArray
 from crowdsim.crowd.people import People, PeopleSource, generator
 from crowdsim.dynamics import realisation
 from crowdsim.dynamics.realisation import Control, Passages, Response
-from crowdsim.study.prepare import Case, Stream
+from crowdsim.study.prepare import Case
+from crowdsim.study.situation import Stream
 
 Floats = NDArray[np.float64]
 _THREAD = threading.local()

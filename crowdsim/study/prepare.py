@@ -3,61 +3,32 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, fields
 
 import numpy as np
 from numpy.typing import NDArray
 
 from crowdsim.bridge.modal import ModalModel, Mode, Point
-from crowdsim.bridge.ordinates import HalfWaves, Ordinate, Table
-from crowdsim.crowd.arrivals import Arrivals, ConstantNumber, GivenArrivals, PoissonArrivals
-from crowdsim.crowd.distributions import Distribution, fixed
-from crowdsim.crowd.people import Walkers
-from crowdsim.crowd.populations import DEFAULT_POPULATION, GRAVITY, POPULATIONS
+from crowdsim.bridge.ordinates import Table
+from crowdsim.crowd.arrivals import ConstantNumber
 from crowdsim.dynamics import newmark, step
 from crowdsim.dynamics.realisation import CELLS, Deck, Recorder, deck_table, table_cells
-from crowdsim.errors import InputError, Problem
 from crowdsim.loads import load_set as loads
-from crowdsim.loads import sets
-from crowdsim.scenario.quantities import FLOORS
 from crowdsim.scenario.reader import Scenario
-from crowdsim.scenario.schema import CaseTable, Shape, StreamTable
+from crowdsim.scenario.schema import CaseTable
+from crowdsim.study.situation import FASTEST_SHARE, SLOWEST_SHARE, Situation, Stream, resonates, situation
 
 Floats = NDArray[np.float64]
 STATIONS = 96
-SLOWEST_SHARE = 0.001
-FASTEST_SHARE = 0.999
-EDGE = 0.3  # m kept free beside each edge where a mode twists
 FINE_FOR_JUMPS = 400  # where a person's force begins with a step
 FINEST = 500  # steps in a second, when a short deck with many half waves asks for more
 
 
 @dataclass(frozen=True)
-class Stream:
-    """A stream as simulated: who walks and what the feet do; `sources`: where defaults came from."""
-
-    walkers: Walkers
-    load: loads.LoadSet
-    sources: tuple[str, ...]
-    outside: float  # share of persons whose pace is outside the load set's range
-    inverse_speed: float  # s/m
-    persons: float  # on the deck on average
-    mean_mass: float  # kg
-
-
-@dataclass(frozen=True)
-class Case:
+class Case(Situation):
     """Everything that the realisations of one case have in common."""
 
-    name: str
-    people: str
-    target: str | None
-    limit: float | None
-    bare: ModalModel
-    model: ModalModel
     driven: tuple[Mode, ...]
-    streams: tuple[Stream, ...]
-    added_mass: dict[str, float]
     choice: step.StepChoice
     points: tuple[Point, ...]
     stations: tuple[Point, ...]
@@ -65,16 +36,9 @@ class Case:
     deck: Deck
     coefficients: Floats
     recorder: Recorder
-    duration: float
     warm_up: float
     warm_up_needed: float
-    window: float
     seed: int
-
-    @property
-    def persons(self) -> float:
-        """On the deck on average."""
-        return sum(s.persons for s in self.streams)
 
     @property
     def end(self) -> float:
@@ -82,57 +46,16 @@ class Case:
         return (self.recorder.total - 1) * self.choice.time_step
 
 
-def modal_model(scenario: Scenario) -> ModalModel:
-    """The bare deck of a scenario."""
-    file = scenario.file
-    length = file.deck.length
-
-    def ordinate(shape: Shape | None) -> Ordinate | None:
-        if shape is None:
-            return None
-        if shape.half_waves is not None:
-            return HalfWaves(shape.half_waves, length, shape.amplitude)
-        assert shape.s is not None
-        assert shape.value is not None
-        return Table(tuple(shape.s), tuple(shape.value), shape.interpolation)
-
-    return ModalModel(
-        length,
-        file.deck.width,
-        tuple(
-            Mode(m.name, m.frequency, m.damping, m.modal_mass, ordinate(m.vertical), ordinate(m.lateral),
-                 ordinate(m.longitudinal), ordinate(m.twist))
-            for m in file.mode
-        ),
-    )  # fmt: skip
-
-
-def cases(scenario: Scenario) -> list[CaseTable]:
-    """The cases of a scenario; without any, one with all streams."""
-    return list(scenario.file.case) or [CaseTable(name="all streams")]  # type: ignore[call-arg]
-
-
 def prepare(scenario: Scenario, table: CaseTable, seed: int | None = None) -> Case:
     """Brings one case to numbers. The people's mass and a pace on a mode's frequency are solved together."""
     file = scenario.file
-    bare = modal_model(scenario)
-    chosen = [s for s in file.stream if table.streams is None or s.name in table.streams]
-    timed = all(s.arrival.times for s in chosen)
-    model, added = bare, {m.name: 0.0 for m in bare.modes}
-    for _ in range(50):
-        streams = tuple(_stream(s, model, file.run.duration, scenario.source) for s in chosen)
-        if table.people == "none":
-            break
-        found = {m.name: _people_mass(bare, m, streams) for m in bare.modes}
-        change = max(abs(found[k] - added[k]) / bare.mode(k).modal_mass for k in found)
-        added, model = found, bare.with_mass(found)
-        if change < 1e-12:
-            break
+    now = situation(scenario, table)
+    bare, model, streams = now.bare, now.model, now.streams
     driven = tuple(m for m in model.modes if m.driven) or model.modes[:1]
     choice, deck = _step(scenario, bare, driven, streams)
     needed = _warm_up(bare, driven, streams)
     given = file.run.warm_up
-    warm_up = given if given is not None else 0.0 if timed else needed
+    warm_up = given if given is not None else 0.0 if now.event else needed
     n = choice.per_second
     warm = math.ceil(warm_up * n - 1e-9)
     observed = max(round(file.run.duration * n), n)
@@ -144,7 +67,8 @@ def prepare(scenario: Scenario, table: CaseTable, seed: int | None = None) -> Ca
         total=warm + observed + 1,
         warm=warm,
         window=n,
-        segment=max(round(file.comfort.window * n), 1),
+        segment=max(round(now.window * n), 1),
+        directions=(deck_s.size * len(model.edges),) * len(model.directions),
     )
     scheme = newmark.Newmark.named(file.run.integration, file.run.matched)
     coefficients = (
@@ -159,125 +83,11 @@ def prepare(scenario: Scenario, table: CaseTable, seed: int | None = None) -> Ca
         else np.zeros((len(driven), 11))
     )
     return Case(
-        name=table.name, people=table.people, target=table.target, limit=table.limit, bare=bare, model=model,
-        driven=driven, streams=streams, added_mass=added, choice=choice, points=points, stations=stations,
+        **{**{f.name: getattr(now, f.name) for f in fields(Situation)}, "duration": observed / n},
+        driven=driven, choice=choice, points=points, stations=stations,
         deck_s=deck_s, deck=deck, coefficients=coefficients, recorder=recorder,
-        duration=observed / n, warm_up=warm / n, warm_up_needed=needed,
-        window=file.comfort.window, seed=file.run.seed if seed is None else seed,
+        warm_up=warm / n, warm_up_needed=needed, seed=file.run.seed if seed is None else seed,
     )  # fmt: skip
-
-
-def _stream(table: StreamTable, model: ModalModel, duration: float, source: str) -> Stream:
-    population = POPULATIONS[table.population or DEFAULT_POPULATION[table.gait]]
-    sources: list[str] = []
-
-    def take(name: str, default: Distribution | None) -> Distribution | None:
-        given = getattr(table, name)
-        if given is None:
-            return default
-        mean = None
-        if getattr(given, "mean_at", None) is not None:
-            mean = model.mode(given.mean_at).frequency / given.harmonic
-            times = "" if given.harmonic == 1 else f" / {given.harmonic}"
-            sources.append(f"pace: mean on the frequency of mode {given.mean_at}{times}, {mean:.4g} Hz")
-        try:
-            built: Distribution = given.build(*FLOORS[name], mean)
-        except ValueError as error:
-            raise InputError(
-                source, [Problem(f"stream {table.name!r}.{name}", str(error), "other bounds, or another mean")]
-            ) from None
-        return built
-
-    pace = take("pace", population.pace)
-    weight = take("weight", population.weight)
-    length = take("step_length", None if table.speed is not None else population.step_length)
-    speed = take("speed", None if table.step_length is not None else population.speed)
-    assert pace is not None
-    assert weight is not None
-    name = table.population or DEFAULT_POPULATION[table.gait]
-    how = "as asked" if table.population else "by default"
-    given = {"pace": table.pace, "stride": table.step_length or table.speed, "weight": table.weight}
-    for quantity, value in given.items():
-        if value is None:
-            what = ("speed" if speed is not None else "step length") if quantity == "stride" else quantity
-            sources.append(f"{what}: population {name} {how} ({population.sources[quantity]})")
-    walkers = Walkers(
-        name=table.name,
-        arrivals=GivenArrivals(()),
-        pace=pace,
-        step_length=length,
-        speed=speed,
-        weight=weight,
-        offset=_offset(table, model),
-        phase=None if table.phase is None else table.phase.build(-math.inf, math.inf),
-        forward_share=table.forward_share,
-    )
-    inverse = walkers.inverse_speed()
-    arrivals, persons = _arrivals(table, model, inverse, duration)
-    load = _load(table, sources)
-    return Stream(
-        walkers=replace(walkers, arrivals=arrivals),
-        load=load,
-        sources=tuple(sources),
-        outside=1.0 - pace.share_within(*load.pace_range),
-        inverse_speed=inverse,
-        persons=persons,
-        mean_mass=weight.expectation() / GRAVITY,
-    )
-
-
-def _offset(table: StreamTable, model: ModalModel) -> Distribution:
-    half = 0.5 * model.width
-    if table.offset is not None:
-        if table.offset.distribution == "fixed":
-            return table.offset.build(-half, half)
-        built = table.offset.build(-half, half)
-        return replace(built, minimum=max(built.minimum, -half), maximum=min(built.maximum, half))
-    if not model.twists or half <= EDGE:
-        return fixed(0.0)
-    return Distribution("uniform", minimum=-(half - EDGE), maximum=half - EDGE)
-
-
-def _arrivals(table: StreamTable, model: ModalModel, inverse: float, duration: float) -> tuple[Arrivals, float]:
-    a = table.arrival
-    crossing = model.length * inverse
-    if a.per_hour is not None:
-        return PoissonArrivals(a.per_hour / 3600.0), a.per_hour / 3600.0 * crossing
-    if a.density is not None:
-        persons = a.density * model.length * model.width
-        return PoissonArrivals(persons / crossing), persons
-    if a.constant is not None:
-        return ConstantNumber(a.constant), float(a.constant)
-    assert a.times is not None
-    times = tuple(sorted(a.times))
-    # at the mean crossing time, over the observed time or up to the last who leaves
-    return GivenArrivals(times), len(times) * crossing / max(duration, times[-1] + crossing)
-
-
-def _load(table: StreamTable, sources: list[str]) -> loads.LoadSet:
-    given = table.load
-    if given is None:
-        name = sets.DEFAULT_LOAD[table.gait]
-        chosen = sets.load_set(table.gait, name)
-        sources.append(f"load: {name} by default ({chosen.source})")
-        return chosen
-    if given.harmonics is not None:
-        phases = None if given.phases is None else tuple(given.phases)
-        return loads.given(tuple(given.harmonics), phases, table.gait)
-    assert given.set is not None
-    chosen = sets.load_set(table.gait, given.set, scatter=given.scatter, contact_ratio=given.contact_ratio)
-    sources.append(f"load: {chosen.name} ({chosen.source}){', factors scattered' if chosen.scatter else ''}")
-    return chosen
-
-
-def _people_mass(bare: ModalModel, mode: Mode, streams: tuple[Stream, ...]) -> float:
-    total = 0.0
-    for s in streams:
-        e = s.walkers.offset
-        mean = e.expectation(1.0)
-        x, w = e.nodes
-        total += s.persons * s.mean_mass * bare.mean_square(mode, mean, math.fsum(w * x * x))
-    return total
 
 
 def _warm_up(model: ModalModel, driven: tuple[Mode, ...], streams: tuple[Stream, ...]) -> float:
@@ -331,19 +141,6 @@ def _fine_tables(model: ModalModel, driven: tuple[Mode, ...], before: int) -> tu
     if not any(m.twist for m in driven):
         return vertical, None
     return vertical, np.stack([m.twist(s) if m.twist else zero for m in driven], axis=1)
-
-
-def resonates(driven: tuple[Mode, ...], streams: tuple[Stream, ...]) -> bool:
-    """Whether a harmonic of any stream comes near the frequency of any mode."""
-    for stream in streams:
-        low = float(stream.walkers.pace.quantile(SLOWEST_SHARE))
-        high = float(stream.walkers.pace.quantile(FASTEST_SHARE))
-        for k, factor in enumerate(stream.load.factors(np.array([0.5 * (low + high)]))[0], start=1):
-            for mode in driven:
-                band = max(3.0 * mode.damping, 0.03) * mode.frequency
-                if factor > 0.0 and k * low - band <= mode.frequency <= k * high + band:
-                    return True
-    return False
 
 
 def _top_harmonic(load: loads.LoadSet) -> int:

@@ -17,7 +17,8 @@ from crowdsim.crowd.populations import GRAVITY
 from crowdsim.dynamics.step import HARMONIC_ANGLE
 from crowdsim.response.statistics import LEAST_FOR_INTERVAL
 from crowdsim.scenario.reader import Scenario
-from crowdsim.study.prepare import EDGE, SLOWEST_SHARE, Case, resonates
+from crowdsim.study.prepare import Case
+from crowdsim.study.situation import DEFAULT_WINDOW, EDGE, SLOWEST_SHARE, resonates
 
 WEIGHT_LIKELY = (300.0, 1500.0)  # N, mean of a stream, common practice
 PACKED = 6.0  # persons/m2: nobody can stand closer
@@ -239,11 +240,16 @@ def _case(scenario: Scenario, case: Case) -> list[Finding]:
             f'{density:.2g} persons/m2 and people = "none": their mass (and the damping that walking bodies add) is '
             'left out; people = "mass" adds the mass',
         )
-    asked = "comfort" in scenario.file.model_fields_set or case.target is not None
-    if asked and case.duration < case.window - 1e-9:
+    if case.duration < case.window - 1e-9:
         warn(
             "comfort.window",
-            f"{case.window:g} s is longer than the observed {case.duration:g} s: no whole window fits; make duration "
-            "at least as long",
+            f"{case.window:g} s is longer than the observed {case.duration:g} s: no whole window fits, so a target can "
+            "be found not met but never met; make duration at least as long",
+        )
+    if scenario.file.comfort.window is None and case.window < DEFAULT_WINDOW - 1e-9 and not case.event:
+        warn(
+            "run.duration",
+            f"{case.duration:g} s is shorter than the usual comfort window of {DEFAULT_WINDOW:g} s: classes and "
+            f"verdicts speak of the whole record of {case.window:g} s; a longer window has higher peaks",
         )
     return found

@@ -20,9 +20,10 @@ from crowdsim.scenario.reader import Scenario
 from crowdsim.study.assumptions import assumptions
 from crowdsim.study.executor import Halt, default_workers, rows
 from crowdsim.study.jobs import run_realisation
-from crowdsim.study.prepare import Case, cases, prepare
+from crowdsim.study.prepare import Case, prepare
 from crowdsim.study.progress import Progress
 from crowdsim.study.sanity import Finding, findings
+from crowdsim.study.situation import cases
 
 LONG_RECORD = 3600.0  # s; of longer records only the surroundings of the largest peak are kept
 AROUND_PEAK = 120.0  # s
@@ -94,7 +95,7 @@ def head(scenario: Scenario, case: Case) -> CaseHead:
     choice = case.choice
     return CaseHead(
         name=case.name, time_step=choice.time_step, warm_up=case.warm_up, duration=case.duration, window=case.window,
-        windows=case.recorder.segments,
+        windows=case.recorder.segments, criterion=case.criterion,
         people=case.people, persons=case.persons,
         points=[(p.name, p.s, p.e, p.direction) for p in case.points],
         directions=case.model.directions, deck_s=case.deck_s, deck_e=case.model.edges,

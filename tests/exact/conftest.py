@@ -15,7 +15,8 @@ from numpy.typing import NDArray
 
 from crowdsim import parse_scenario
 from crowdsim.study.jobs import Row, run_realisation
-from crowdsim.study.prepare import Case, cases, prepare
+from crowdsim.study.prepare import Case, prepare
+from crowdsim.study.situation import cases
 
 Floats = NDArray[np.float64]
 

@@ -19,7 +19,8 @@ import pytest
 from crowdsim.dynamics import kernels
 from crowdsim.scenario.reader import parse_scenario
 from crowdsim.study.jobs import run_realisation
-from crowdsim.study.prepare import cases, prepare
+from crowdsim.study.prepare import prepare
+from crowdsim.study.situation import cases
 
 MODES = "".join(
     f"""
@@ -88,7 +89,8 @@ import numpy as np
 from crowdsim.dynamics import kernels
 from crowdsim.scenario.reader import parse_scenario
 from crowdsim.study.jobs import run_realisation
-from crowdsim.study.prepare import cases, prepare
+from crowdsim.study.prepare import prepare
+from crowdsim.study.situation import cases
 
 try:
     kernels.person_table(np.zeros(kernels.SLOT - 1), np.uint64(0), 0.1)

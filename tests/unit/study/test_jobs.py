@@ -11,7 +11,8 @@ from crowdsim.dynamics.realisation import Control, Response
 from crowdsim.scenario.reader import Scenario
 from crowdsim.study import jobs
 from crowdsim.study.jobs import Row, draw, joined, run_realisation
-from crowdsim.study.prepare import Case, cases, prepare
+from crowdsim.study.prepare import Case, prepare
+from crowdsim.study.situation import cases
 
 PACE = "pace = { mean = 1.87, sd = 0.186, min = 1.3, max = 2.6 }"
 LOAD = "load = { harmonics = [0.4, 0.1, 0.1] }"

@@ -15,7 +15,8 @@ from scipy import integrate, stats
 
 from crowdsim.crowd.arrivals import ConstantNumber, GivenArrivals, PoissonArrivals
 from crowdsim.scenario.reader import Scenario
-from crowdsim.study.prepare import Case, cases, prepare
+from crowdsim.study.prepare import Case, prepare
+from crowdsim.study.situation import cases
 
 PACE = "pace = { mean = 1.87, sd = 0.186, min = 1.3, max = 2.6 }"
 LOAD = "load = { harmonics = [0.4, 0.1, 0.1] }"

@@ -1,0 +1,46 @@
+"""Numbers, shares and durations as a person reads them."""
+
+from __future__ import annotations
+
+from math import floor, log10
+
+
+def number(value: float, digits: int = 3) -> str:
+    """With `digits` significant digits and no power of ten within reach.
+
+    >>> number(0.98765), number(1234.5), number(0.0)
+    ('0.988', '1,234', '0')
+    """
+    if value == 0.0:
+        return "0"
+    if not 1e-4 <= abs(value) < 1e6:
+        return f"{value:.{digits - 1}e}"
+    places = max(0, digits - 1 - floor(log10(abs(value))))
+    return f"{value:,.{places}f}"
+
+
+def percent(share: float) -> str:
+    """A probability: two significant digits, never 0 or 100 % for a share that is neither.
+
+    >>> percent(0.05), percent(0.0), percent(0.99999), percent(0.333)
+    ('5 %', '0 %', 'over 99.9 %', '33 %')
+    """
+    if 0.0 < share < 1e-4:
+        return "under 0.01 %"
+    if 0.999 < share < 1.0:
+        return "over 99.9 %"
+    digits = 2 if share < 0.95 else 3
+    return f"{100 * share:.{digits}g} %"
+
+
+def span(seconds: float) -> str:
+    """A duration as a person says it.
+
+    >>> span(75.0), span(240.0), span(7200.0)
+    ('75 s', '4 min', '2 h')
+    """
+    if seconds < 90.0:
+        return f"{seconds:.3g} s"
+    if seconds < 5400.0:
+        return f"{seconds / 60:.3g} min"
+    return f"{seconds / 3600:.3g} h"
