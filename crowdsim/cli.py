@@ -22,6 +22,7 @@ app = typer.Typer(
 )
 
 ScenarioFile = Annotated[Path, typer.Argument(help="Scenario file (TOML).", metavar="SCENARIO")]
+RunFile = Annotated[Path, typer.Argument(help="Results file of a run (HDF5).", metavar="RUN.h5")]
 CaseName = Annotated[str | None, typer.Option("--case", help="Only the case of this name.", metavar="NAME")]
 Count = Annotated[
     int | None, typer.Option("--realisations", min=1, max=10_000_000, help="Default: the scenario's.", metavar="N")
@@ -49,10 +50,12 @@ def simulate(
     verbose: Verbose = False,
 ) -> None:
     """Simulate every case of a scenario and write the results file."""
-    from crowdsim.console import Console, RunProgress
+    from crowdsim.console.base import Console
+    from crowdsim.console.progress import RunProgress
+    from crowdsim.console.summary import summary
     from crowdsim.errors import InterruptedRunError, ResultsError
-    from crowdsim.results.summary import summarise
     from crowdsim.scenario.reader import read_scenario
+    from crowdsim.study.compare import compare_file
     from crowdsim.study.simulate import plan, simulate_to
 
     console = Console(quiet=quiet, verbose=verbose, json=json)
@@ -65,9 +68,9 @@ def simulate(
             simulate_to(prepared, out, workers=workers, progress=progress, force=force)
     except InterruptedRunError as stopped:
         if stopped.kept:
-            console.summary(summarise(stopped.kept, prepared.scenario.title))
+            summary(console, compare_file(stopped.kept))
         raise
-    console.summary(summarise(out, prepared.scenario.title))
+    summary(console, compare_file(out))
 
 
 @app.command()
@@ -79,13 +82,48 @@ def check(
     verbose: Verbose = False,
 ) -> None:
     """Read a scenario, show it as understood, say what is doubtful. Changes nothing."""
-    from crowdsim.console import Console
+    from crowdsim.console.base import Console
+    from crowdsim.console.check import check as show
     from crowdsim.scenario.reader import read_scenario
     from crowdsim.study.simulate import plan, refuse_errors
 
     prepared = plan(read_scenario(scenario), case=case, realisations=realisations)
-    Console(verbose=verbose, json=json).check(prepared)
+    show(Console(verbose=verbose, json=json), prepared)
     refuse_errors(prepared)
+
+
+@app.command()
+def estimate(scenario: ScenarioFile, case: CaseName = None, json: Json = False) -> None:
+    """Which modes lie in reach, and what the hand formulas give. No simulation."""
+    from crowdsim.console.base import Console
+    from crowdsim.console.estimate import estimate as show
+    from crowdsim.scenario.reader import read_scenario
+    from crowdsim.study.estimate import estimate as compute
+
+    show(Console(json=json), compute(read_scenario(scenario), case))
+
+
+@app.command()
+def compare(
+    run: RunFile,
+    percentile: Annotated[
+        float, typer.Option("--percentile", min=0.01, max=0.999, help="Of the peak, as a share.", metavar="P")
+    ] = 0.95,
+    limit: Annotated[
+        float | None,
+        typer.Option("--limit", help="Judge by this limit, m/s2, in place of what was asked.", metavar="A"),
+    ] = None,
+    json: Json = False,
+) -> None:
+    """Judge the cases of a run; put the hand formulas beside the simulated numbers."""
+    from crowdsim.console.base import Console
+    from crowdsim.console.compare import compare as show
+    from crowdsim.errors import InputError, Problem
+    from crowdsim.study.compare import compare_file
+
+    if limit is not None and not 0.0 < limit < 1e3:
+        raise InputError("--limit", [Problem("limit", f"{limit:g} m/s2 given", "above 0, in m/s2")])
+    show(Console(json=json), compare_file(run, percentile=percentile, limit=limit))
 
 
 @app.command()

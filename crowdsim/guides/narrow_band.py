@@ -87,7 +87,7 @@ def vanmarcke(share: float, frequency: float, damping: float, time: float) -> fl
 
         L = (1 - e) exp(-2 f T e (1 - exp(-sqrt(pi/2) q^1.2 r)) / (1 - e)),    e = exp(-r^2 / 2).
 
-    1 - e: the process starts within; 2 f e: crossings outward of |a|; the bracket: the share of them that is the first of
+    1 - e: the process starts within; 2 f e: crossings outward of |a|; the bracket: the share of them that is first in
     a clump; over 1 - e: only time spent within counts. q = sqrt(4 zeta / pi) is the bandwidth of a lightly damped mode
     under white noise, 1.2 an exponent that the source fitted to simulations. Vanmarcke, On the distribution of
     the first-passage time for normal stationary random processes, J. Appl. Mech. 42, 1975, 215-220; from memory.

@@ -103,8 +103,8 @@ def moving_force_factor_along(ordinates: Floats, decay: float) -> float:
     |ordinate|: read there too, the peak acceleration is the factor x F phi_max^2 / (2 zeta M). The slowly varying
     amplitude A' + zeta omega A = F phi(t) / (2 M omega) starts from rest, runs along straight chords between the places
     and is integrated exactly, its turning points within a cell included; after the crossing it only decays. Good
-    to zeta^2 and the square of 1 / (load cycles in a half wave), and, where the ordinate jumps at an end of the deck,
-    to about zeta / factor. Own derivation, as for `moving_force_factor`.
+    to zeta^2 + (1 / (2 cycles in a half wave))^2, and to about zeta / factor where the ordinate is not 0 at an end of
+    the deck. Own derivation, as for `moving_force_factor`.
 
     ValueError for ordinates that do not fit or a negative decay.
 

@@ -1,7 +1,8 @@
 """Likelihood of the Gumbel and GEV laws: value, derivatives and maximum; the numbers behind `extremes`.
 
-Parameters are arrays (location, scale, shape). Values are best handed over with a spread of about 1. The local maximum
-with a shape above -1 is sought: below, the likelihood has no bound.
+Values are arrays [..., value], parameters [..., 3] with location, scale, shape: many samples at once, as a bootstrap
+needs. Values are best handed over with a spread of about 1. The local maximum with a shape above -1 is sought: below,
+the likelihood has no bound.
 """
 
 from __future__ import annotations
@@ -10,6 +11,7 @@ import math
 from typing import Literal
 
 import numpy as np
+from numpy.polynomial.polynomial import polyval
 from numpy.typing import NDArray
 
 Floats = NDArray[np.float64]
@@ -17,6 +19,7 @@ Family = Literal["gumbel", "gev"]
 LEAST_SHAPE = -1.0  # at and below it the likelihood of the GEV law has no bound
 LEAST_REGULAR_SHAPE = -0.5  # at and below it standard errors do not follow from the likelihood
 ITERATIONS = 100
+HALVINGS = 40
 CONVERGED = 1e-14  # Newton decrement: an error of 1e-7 standard errors, and one full step follows
 EULER = 0.5772156649015329
 
@@ -36,128 +39,148 @@ def growth_slope(u: Floats) -> Floats:
     return np.where(small, series, (np.exp(safe) - growth(safe)) / safe)
 
 
-def log_ratio(u: Floats) -> tuple[Floats, Floats, Floats]:
-    """ln(1 + u)/u and its first two derivatives; by series where the quotients cancel."""
+def log_ratio(u: Floats) -> Floats:
+    """ln(1 + u)/u."""
+    zero = u == 0.0
+    return np.where(zero, 1.0, np.log1p(u) / np.where(zero, 1.0, u))
+
+
+def log_ratio_slopes(u: Floats, ratio: Floats) -> tuple[Floats, Floats]:
+    """First two derivatives of ln(1 + u)/u, given with it; by series where the quotients cancel."""
     small = np.abs(u) < 0.03
     safe = np.where(small, 1.0, u)
-    value = np.log1p(safe) / safe
     inverse = 1.0 / (1.0 + safe)
-    slope = (inverse - value) / safe
-    curvature = (-(inverse**2) - 2.0 * slope) / safe
+    slope = (inverse - ratio) / safe
+    curvature = -(inverse**2 + 2.0 * slope) / safe
     if small.any():
-        v = u[small]
-        k = np.arange(12)  # 0.03^12 is far below rounding
+        k = np.arange(12.0)  # 0.03^12 is far below rounding
         sign = (-1.0) ** k
-        powers = v[:, None] ** k
-        value[small] = powers @ (sign / (k + 1.0))
-        slope[small] = powers @ (-sign * (k + 1.0) / (k + 2.0))
-        curvature[small] = powers @ (sign * (k + 1.0) * (k + 2.0) / (k + 3.0))
-    return value, slope, curvature
+        slope[small] = polyval(u[small], -sign * (k + 1.0) / (k + 2.0))
+        curvature[small] = polyval(u[small], sign * (k + 1.0) * (k + 2.0) / (k + 3.0))
+    return slope, curvature
 
 
-def log_likelihood(x: Floats, parameters: Floats) -> float:
-    """Of all values; -inf outside the parameters' range or with a value outside the law's ends."""
-    location, scale, shape = parameters
-    if scale <= 0.0 or shape <= LEAST_SHAPE:
-        return -math.inf
+def log_likelihood(x: Floats, parameters: Floats) -> Floats:
+    """Of each sample; -inf outside the parameters' range or with a value outside the law's ends."""
+    location, scale, shape = np.moveaxis(parameters[..., None], -2, 0)
+    allowed = (scale > 0.0) & (shape > LEAST_SHAPE)
+    scale = np.where(allowed, scale, 1.0)
     z = (x - location) / scale
     u = shape * z
-    if u.min() <= -1.0:
-        return -math.inf
-    y = z * log_ratio(u)[0] if shape else z
+    allowed = allowed & (u.min(axis=-1, keepdims=True) > -1.0)
+    y = z * log_ratio(np.where(allowed, u, 0.0))
     with np.errstate(over="ignore"):
-        return float(-x.size * math.log(scale) - np.sum((1.0 + shape) * y + np.exp(-y)))
+        found = -x.shape[-1] * np.log(scale[..., 0]) - np.sum((1.0 + shape) * y + np.exp(-y), axis=-1)
+    return np.asarray(np.where(allowed[..., 0], found, -np.inf))
 
 
 def derivatives(x: Floats, parameters: Floats) -> tuple[Floats, Floats]:
-    """Score of every value [value, 3] and Hessian [3, 3] of the log-likelihood, in (location, scale, shape).
+    """Score of every value [..., 3, value] and Hessian [..., 3, 3] of the log-likelihood.
 
     One value's share is l = -ln(scale) - (1 + shape) y - exp(-y), y = z A(shape z), A(u) = ln(1 + u)/u.
     """
-    location, scale, shape = parameters
+    location, scale, shape = np.moveaxis(parameters[..., None], -2, 0)
     z = (x - location) / scale
-    a, a1, a2 = log_ratio(shape * z)
+    u = shape * z
+    a = log_ratio(u)
+    a1, a2 = log_ratio_slopes(u, a)
     y = z * a
     y_s, y_ss = z**2 * a1, z**3 * a2  # s: the shape
-    y_z = 1.0 / (1.0 + shape * z)
+    y_z = 1.0 / (1.0 + u)
     t = np.exp(-y)
     l_y = t - (1.0 + shape)
     l_z = l_y * y_z
     l_zz = -(t + shape * l_y) * y_z**2
     l_zs = -(t * y_s + 1.0) * y_z - l_y * z * y_z**2
     l_ss = -t * y_s**2 + l_y * y_ss - 2.0 * y_s
-    scores = np.stack([-l_z / scale, -(1.0 + z * l_z) / scale, l_y * y_s - y], axis=1)
-    cross = np.sum(z * l_zz + l_z) / scale**2
-    hessian = np.array(
-        [
-            [np.sum(l_zz) / scale**2, cross, -np.sum(l_zs) / scale],
-            [cross, np.sum(1.0 + z**2 * l_zz + 2.0 * z * l_z) / scale**2, -np.sum(z * l_zs) / scale],
-            [-np.sum(l_zs) / scale, -np.sum(z * l_zs) / scale, np.sum(l_ss)],
-        ]
-    )
+    scores = np.stack([-l_z / scale, -(1.0 + z * l_z) / scale, l_y * y_s - y], axis=-2)
+    hessian = np.empty((*parameters.shape, 3))
+    unit = scale[..., 0]
+    hessian[..., 0, 0] = l_zz.sum(axis=-1) / unit**2
+    hessian[..., 0, 1] = hessian[..., 1, 0] = (z * l_zz + l_z).sum(axis=-1) / unit**2
+    hessian[..., 0, 2] = hessian[..., 2, 0] = -l_zs.sum(axis=-1) / unit
+    hessian[..., 1, 1] = (1.0 + z**2 * l_zz + 2.0 * z * l_z).sum(axis=-1) / unit**2
+    hessian[..., 1, 2] = hessian[..., 2, 1] = -(z * l_zs).sum(axis=-1) / unit
+    hessian[..., 2, 2] = l_ss.sum(axis=-1)
     return scores, hessian
 
 
 def l_moment_estimate(x: Floats, family: Family) -> Floats:
     """Estimate by L-moments: Hosking, Wallis & Wood 1985 for the GEV law, Hosking 1990 for Gumbel's, from memory."""
-    n = x.size
+    n = x.shape[-1]
     i = np.arange(n)
-    ordered = np.sort(x)
-    b0 = ordered.mean()
-    b1 = np.sum(i * ordered) / (n * (n - 1.0))
-    b2 = np.sum(i * (i - 1.0) * ordered) / (n * (n - 1.0) * (n - 2.0))
+    ordered = np.sort(x, axis=-1)
+    b0 = ordered.mean(axis=-1)
+    b1 = ordered @ (i / (n * (n - 1.0)))
+    b2 = ordered @ (i * (i - 1.0) / (n * (n - 1.0) * (n - 2.0)))
     l2 = 2.0 * b1 - b0
-    gumbel = np.array([b0 - EULER * l2 / math.log(2.0), l2 / math.log(2.0), 0.0])
+    gumbel = np.stack([b0 - EULER * l2 / math.log(2.0), l2 / math.log(2.0), np.zeros_like(l2)], axis=-1)
     if family == "gumbel":
         return gumbel
     c = 2.0 / (3.0 + (6.0 * b2 - 6.0 * b1 + b0) / l2) - math.log(2.0) / math.log(3.0)
-    k = min(7.8590 * c + 2.9554 * c * c, 0.5)
-    if abs(k) < 1e-6:
-        return gumbel
-    gamma = math.gamma(1.0 + k)
+    k = np.minimum(7.8590 * c + 2.9554 * c * c, 0.5)
+    k = np.where(np.abs(k) < 1e-6, 1e-6, k)
+    gamma = np.vectorize(math.gamma)(1.0 + k)
     scale = l2 * k / ((1.0 - 2.0**-k) * gamma)
-    start = np.array([b0 - scale * (1.0 - gamma) / k, scale, -k])
-    return start if math.isfinite(log_likelihood(x, start)) else gumbel
+    gev = np.stack([b0 - scale * (1.0 - gamma) / k, scale, -k], axis=-1)
+    return np.where(np.isfinite(log_likelihood(x, gev))[..., None], gev, gumbel)
 
 
-def maximise(x: Floats, family: Family) -> Floats:
-    """Parameters of largest likelihood, by Newton's method with halved steps."""
+def maximise(x: Floats, family: Family) -> tuple[Floats, NDArray[np.bool_]]:
+    """Parameters [sample, 3] of largest likelihood for samples [sample, value], and where there is such a maximum.
+
+    Newton's method, its steps halved until the likelihood does not fall.
+    """
     free = 2 if family == "gumbel" else 3
     parameters = l_moment_estimate(x, family)
-    reached = log_likelihood(x, parameters)
+    found = np.zeros(x.shape[0], dtype=bool)
+    active = np.arange(x.shape[0])
     for _ in range(ITERATIONS):
-        scores, hessian = derivatives(x, parameters)
-        gradient = scores.sum(axis=0)[:free]
-        curvature, axes = np.linalg.eigh(-hessian[:free, :free])
+        some, here = x[active], parameters[active]
+        scores, hessian = derivatives(some, here)
+        gradient = scores.sum(axis=-1)[:, :free]
+        curvature, axes = np.linalg.eigh(-hessian[:, :free, :free])
         # absolute values: a way up also where the likelihood is not concave
-        step = np.zeros(3)
-        step[:free] = axes @ ((axes.T @ gradient) / np.maximum(np.abs(curvature), 1e-9 * x.size))
-        if gradient @ step[:free] < CONVERGED and curvature[0] > 0.0:
-            return parameters + step
-        for _ in range(40):
-            tried = log_likelihood(x, parameters + step)
-            if tried >= reached - 1e-12 * x.size:
-                break
-            step *= 0.5
-        else:
+        along = np.einsum("sji,sj->si", axes, gradient) / np.maximum(np.abs(curvature), 1e-9 * x.shape[1])
+        step = np.zeros_like(here)
+        step[:, :free] = np.einsum("sij,sj->si", axes, along)
+        done = (np.sum(gradient * step[:, :free], axis=1) < CONVERGED) & (curvature[:, 0] > 0.0)
+        found[active[done]] = True
+        step, moved = _shortened(some, here, step)
+        parameters[active] = here + step
+        active = active[~done & moved]
+        if active.size == 0:
             break
-        parameters, reached = parameters + step, tried
-    raise ValueError(
-        f"the likelihood has no maximum with a shape above {LEAST_SHAPE:g}: the values crowd against a bound"
-        if family == "gev"
-        else "the likelihood has no maximum"
-    )
+    return parameters, found
 
 
-def covariance_of(x: Floats, parameters: Floats, family: Family, label: NDArray[np.intp], unit: Floats) -> Floats:
-    """Of the free parameters, in the unit of each."""
+def _shortened(x: Floats, parameters: Floats, step: Floats) -> tuple[Floats, NDArray[np.bool_]]:
+    """Steps halved until the likelihood does not fall, and which of them are left."""
+    least = log_likelihood(x, parameters) - 1e-12 * x.shape[1]  # rounding
+    falls = log_likelihood(x, parameters + step) < least
+    for _ in range(HALVINGS):
+        if not falls.any():
+            break
+        step = np.where(falls[:, None], 0.5 * step, step)
+        falls[falls] = log_likelihood(x[falls], (parameters + step)[falls]) < least[falls]
+    return np.where(falls[:, None], 0.0, step), ~falls
+
+
+def covariance_of(x: Floats, parameters: Floats, family: Family, label: NDArray[np.intp]) -> Floats:
+    """Of the free parameters of one sample; label : group of each value, from 0 without gaps. See `extremes.fit`."""
     free = 2 if family == "gumbel" else 3
+    groups = int(label.max()) + 1
     if parameters[2] <= LEAST_REGULAR_SHAPE:
         return np.full((free, free), np.nan)
-    scores, hessian = derivatives(x, parameters)
-    covariance = np.linalg.inv(-hessian[:free, :free])
-    groups = int(label.max()) + 1
-    if groups < x.size:
-        summed = np.stack([np.bincount(label, weights=scores[:, i], minlength=groups) for i in range(free)], axis=1)
-        covariance = covariance @ (summed.T @ summed) @ covariance
-    return np.asarray(covariance * np.outer(unit[:free], unit[:free]))
+    scores, hessians = derivatives(x[:, None], np.broadcast_to(parameters, (x.size, 3)))
+    information = -hessians.sum(axis=0)[:free, :free]
+    if groups == x.size:
+        return np.asarray(np.linalg.inv(information))
+    score, own = np.zeros((groups, free)), np.zeros((groups, free, free))
+    np.add.at(score, label, scores[:, :free, 0])
+    np.add.at(own, label, -hessians[:, :free, :free])
+    rest = information - own
+    definite = np.linalg.eigvalsh(rest)[:, 0] > 0.0
+    rest = np.where(definite[:, None, None], rest, information)
+    change = np.linalg.solve(rest, score[..., None])[..., 0]
+    return np.asarray(change.T @ change)

@@ -22,6 +22,7 @@ from crowdsim.response.windows import Proportion, window_exceedance, window_perc
 from crowdsim.results.texts import number, percent, span
 
 Floats = NDArray[np.float64]
+FEW = 20  # windows below which a 95 % value is the largest of all
 LOADED = ("vertical",)  # directions in which forces act in this version; others are not judged
 
 
@@ -36,6 +37,14 @@ class Asked:
     target: str | None
     limit: float | None
     words: str
+
+
+@dataclass(frozen=True)
+class Question:
+    """What is asked beside the scenario: another percentile, another limit [m/s2]."""
+
+    percentile: float = 0.95
+    limit: float | None = None
 
 
 @dataclass(frozen=True)
@@ -72,21 +81,29 @@ class Judgement:
     sentence: str
 
 
-def asked(attributes: dict[str, Any], direction: str) -> Asked:
-    """What the attributes of a case ask of a direction."""
+def asked(attributes: dict[str, Any], direction: str, limit: float | None = None) -> Asked:
+    """What the attributes of a case ask of a direction; `limit` [m/s2] in place of that."""
     criterion = CRITERIA[str(attributes["criterion"])]
     target = str(attributes["target"]) if "target" in attributes else None
+    if limit is not None:
+        return Asked(criterion, None, limit, "given")
     if "limit" in attributes:
-        return Asked(criterion, None, float(attributes["limit"]), "the owner's limit")
+        return Asked(criterion, None, float(attributes["limit"]), "the owner's")
     if target is not None:
-        limit = criterion.limit(direction, target)
-        return Asked(criterion, target, limit, f"the upper bound of {target} of {criterion.title}")
+        bound = criterion.limit(direction, target)
+        return Asked(criterion, target, bound, f"upper bound of {target}, {criterion.title}")
     if not criterion.classes:
-        return Asked(criterion, None, criterion.limit(direction), f"the limit of {criterion.title}")
+        return Asked(criterion, None, criterion.limit(direction), criterion.title)
     return Asked(criterion, None, None, "")
 
 
-def judge(attributes: dict[str, Any], direction: str, window_peaks: Floats, record_peaks: Floats) -> Judgement:
+def judge(
+    attributes: dict[str, Any],
+    direction: str,
+    window_peaks: Floats,
+    record_peaks: Floats,
+    question: Question = Question(),
+) -> Judgement:
     """Judges one direction of a case.
 
     Parameters
@@ -98,13 +115,13 @@ def judge(attributes: dict[str, Any], direction: str, window_peaks: Floats, reco
     short = window_peaks.shape[1] == 0
     peaks = record_peaks[:, None] if short else window_peaks
     duration, window = float(attributes["duration"]), float(attributes["window"])
-    wants = asked(attributes, direction)
-    value = window_percentile(peaks)
+    wants = asked(attributes, direction, question.limit)
+    value = window_percentile(peaks, question.percentile)
     count = peaks.shape[0]
     exceedance = None if wants.limit is None else window_exceedance(peaks, wants.limit)
     says, needed = _verdict(value, wants.limit, exceedance, count, short)
     name = wants.criterion.classify(value.value, direction)
-    notes = _notes(wants, direction, short, duration, window, exceedance, says, needed, count)
+    notes = _notes(wants, direction, short, duration, window, exceedance, value, says, needed, count)
     common: dict[str, Any] = {
         "case": str(attributes["name"]), "direction": direction, "realisations": count, "windows": peaks.shape[1],
         "window": duration if short else window, "whole": short or window >= duration - 1e-9, "short": short,
@@ -149,12 +166,12 @@ def _verdict(
         return "undecided", None
     if says != "undecided":
         return says, None
-    return says, None if short else realisations_to_decide(exceedance, count)
+    return says, None if short else realisations_to_decide(exceedance, count, value.share)
 
 
 def _notes(
     wants: Asked, direction: str, short: bool, duration: float, window: float, exceedance: Proportion | None,
-    says: Verdict | None, needed: int | None, count: int,
+    value: Percentile, says: Verdict | None, needed: int | None, count: int,
 ) -> list[str]:  # fmt: skip
     notes = []
     if short:
@@ -167,13 +184,13 @@ def _notes(
     elif direction in wants.criterion.notes:
         notes.append(f"{wants.criterion.title}: {wants.criterion.notes[direction]}")
     if count < LEAST_FOR_INTERVAL:
-        notes.append(f"no interval and no verdict below {LEAST_FOR_INTERVAL} realisations")
+        notes.append(f"no interval of the 95 % value, hence no verdict, below {LEAST_FOR_INTERVAL} realisations")
     if says == "undecided" and not short and exceedance is not None:
-        share = percent(exceedance.value)
+        above, near = percent(exceedance.value), percent(1.0 - value.share)
         notes.append(
-            f"about {needed:,} realisations would decide, if {share} of the windows stay above the limit"
+            f"about {needed:,} realisations would decide, if {above} of the windows stay above the limit"
             if needed is not None
-            else f"{share} of the windows are above the limit: so near 5 % that no number in reach would decide"
+            else f"{above} of the windows are above the limit: so near {near} that no number in reach would decide"
         )
     return notes
 
@@ -182,7 +199,7 @@ def _sentence(
     common: dict[str, Any], value: Percentile, name: str | None, wants: Asked, says: Verdict | None, needed: int | None
 ) -> str:
     """Ready to paste: percentile, window, case, value, interval, class, limit, verdict."""
-    many = common["realisations"] > 1 or common["windows"] > 1
+    many = common["realisations"] * common["windows"] >= FEW
     number_of = f"{common['realisations']:,} simulated realisation{'s' if common['realisations'] != 1 else ''}"
     if common["windows"] > 1:
         number_of += f" of {common['windows']} windows each"
@@ -201,7 +218,7 @@ def _sentence(
     if says is None:
         return text + "."
     state = {"met": "is met", "not met": "is not met"}.get(says, "is neither shown to be met nor to be exceeded")
-    text += f"; {wants.words}, {number(wants.limit or 0.0)} m/s2, {state}"
+    text += f"; the limit of {number(wants.limit or 0.0)} m/s2 ({wants.words}) {state}"
     if needed is not None:
         text += f" (about {needed:,} realisations would decide)"
     return text + "."
@@ -212,7 +229,8 @@ def buys(judgement: Judgement) -> str:
     half = relative_half_width(judgement.value)
     if half is None:
         return f"{LEAST_FOR_INTERVAL} realisations give a first interval."
-    text = f"{judgement.realisations:,} realisations give +-{100 * half:.2g} % on the 95 % value"
+    share = f"{100 * judgement.value.share:g} %"
+    text = f"{judgement.realisations:,} realisations give +-{100 * half:.2g} % on the {share} value"
     if half <= 0.03 or judgement.wanted is None:
         return text + "."
     return f"{text}; +-3 % needs about {judgement.wanted:,}."

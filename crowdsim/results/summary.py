@@ -12,7 +12,7 @@ import numpy as np
 
 from crowdsim.response.statistics import Distribution1D, Percentile, describe, percentile_rank
 from crowdsim.response.windows import Proportion, window_exceedance, window_percentile
-from crowdsim.results.judgement import LOADED, Judgement, asked, judge
+from crowdsim.results.judgement import LOADED, Judgement, Question, asked, judge
 from crowdsim.results.reader import _strings, open_file
 
 _SLAB = 2_000_000  # numbers of the envelope in memory at a time
@@ -88,8 +88,12 @@ class Summary:
         return asdict(self)
 
 
-def summarise(path: str | Path, title: str) -> Summary:
-    """The summary of the results file at `path`. Raises ResultsError."""
+def summarise(path: str | Path, title: str, *, percentile: float = 0.95, limit: float | None = None) -> Summary:
+    """The summary of the results file at `path`. Raises ResultsError.
+
+    percentile : of the judged peak, in place of 95 %; limit [m/s2] : in place of what the cases ask
+    """
+    question = Question(percentile, limit)
     with open_file(path) as file:
         return Summary(
             title=title,
@@ -97,11 +101,11 @@ def summarise(path: str | Path, title: str) -> Summary:
             version=str(file.attrs["crowdsim_version"]),
             file=str(path),
             findings=tuple(json.loads(file.attrs["findings"])),
-            cases=tuple(_case(file["cases"][k]) for k in sorted(file["cases"], key=int)),
+            cases=tuple(_case(file["cases"][k], question) for k in sorted(file["cases"], key=int)),
         )
 
 
-def _case(group: Any) -> CaseSummary:
+def _case(group: Any, question: Question) -> CaseSummary:
     rows, place = group["realisations"], group["points"]
     names, directions = _strings(place["name"]), _strings(place["direction"])
     modes = group["modes"]
@@ -116,9 +120,9 @@ def _case(group: Any) -> CaseSummary:
         limit=float(group.attrs["limit"]) if "limit" in group.attrs else None,
         persons_on_deck=float(group.attrs["persons_on_deck"]),
         crossings_mean=float(np.mean(rows["crossings"][()])),
-        points=tuple(_point(group, i, names[i], directions[i]) for i in range(len(names))),
+        points=tuple(_point(group, question, i, names[i], directions[i]) for i in range(len(names))),
         deck=tuple(
-            _deck(d, group) for d in dict.fromkeys(directions) if isinstance(group["deck"].get(d), h5py.Group)
+            _deck(d, group, question) for d in dict.fromkeys(directions) if isinstance(group["deck"].get(d), h5py.Group)
         ),
         modes=tuple(
             {"name": n, **{k: float(modes[k][i]) for k in keys}} for i, n in enumerate(_strings(modes["name"]))
@@ -127,10 +131,10 @@ def _case(group: Any) -> CaseSummary:
     )  # fmt: skip
 
 
-def _point(group: Any, i: int, name: str, direction: str) -> PointSummary:
+def _point(group: Any, question: Question, i: int, name: str, direction: str) -> PointSummary:
     rows, place = group["realisations"], group["points"]
     peak, windows = rows["peak"][:, i], rows["window_peak"][:, :, i]
-    limit = asked(dict(group.attrs), direction).limit if direction in LOADED else None
+    limit = asked(dict(group.attrs), direction, question.limit).limit if direction in LOADED else None
     return PointSummary(
         name=name,
         s=float(place["s"][i]),
@@ -139,13 +143,13 @@ def _point(group: Any, i: int, name: str, direction: str) -> PointSummary:
         peak=describe(peak),
         rms=describe(rows["rms"][:, i]),
         running_rms_max=describe(rows["running_rms_max"][:, i]),
-        window_peak=window_percentile(windows) if windows.size else None,
+        window_peak=window_percentile(windows, question.percentile) if windows.size else None,
         exceedance=None if limit is None else window_exceedance(peak, limit),
         window_exceedance=window_exceedance(windows, limit) if limit is not None and windows.size else None,
     )
 
 
-def _deck(direction: str, group: Any) -> DeckSummary:
+def _deck(direction: str, group: Any, question: Question) -> DeckSummary:
     deck = group["deck"]
     data = deck[direction]["peak_envelope"]
     count, across, along = data.shape
@@ -163,5 +167,5 @@ def _deck(direction: str, group: Any) -> DeckSummary:
                 best, where = float(values[j]), (e, s + j)
     judged = None
     if direction in LOADED:
-        judged = judge(dict(group.attrs), direction, deck[direction]["window_peak"][()], largest)
+        judged = judge(dict(group.attrs), direction, deck[direction]["window_peak"][()], largest, question)
     return DeckSummary(direction, float(deck["s"][where[1]]), float(deck["e"][where[0]]), describe(largest), judged)

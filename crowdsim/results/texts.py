@@ -22,15 +22,18 @@ def number(value: float, digits: int = 3) -> str:
 def percent(share: float) -> str:
     """A probability: two significant digits, never 0 or 100 % for a share that is neither.
 
-    >>> percent(0.05), percent(0.0), percent(0.99999), percent(0.333)
-    ('5 %', '0 %', 'over 99.9 %', '33 %')
+    >>> percent(0.05), percent(0.0), percent(0.99999), percent(0.333), percent(0.0042)
+    ('5.0 %', '0 %', 'over 99.9 %', '33 %', '0.42 %')
     """
     if 0.0 < share < 1e-4:
         return "under 0.01 %"
     if 0.999 < share < 1.0:
         return "over 99.9 %"
-    digits = 2 if share < 0.95 else 3
-    return f"{100 * share:.{digits}g} %"
+    value = 100.0 * share
+    if value in (0.0, 100.0):
+        return f"{value:.0f} %"
+    places = 0 if 10.0 <= value < 98.95 else 1 if value >= 1.0 else 1 - floor(log10(value))
+    return f"{value:.{places}f} %"
 
 
 def span(seconds: float) -> str:

@@ -20,12 +20,12 @@ from crowdsim.study.resonances import Resonance, density_on_deck, reach, resonan
 from crowdsim.study.screening import Screened, screen
 from crowdsim.study.situation import Situation, Stream, cases, situation
 
-TEXTBOOK = "textbook; derived in this program's documentation and tests"
+TEXTBOOK = "textbook; derived and tested here"
 STEADY, CROSSING = "steady state in resonance", "one crossing in resonance, force moving"
-FIXED = "one crossing in resonance, force at a fixed place"
+FIXED = "one crossing in resonance, force in one place"
 WEIGHTS = "resonance by weights, C = {}"
-RANDOM_SQUARE_ROOT = "one crossing times the square root of the number on the deck"
-NARROW_SD, NARROW_PEAK = "random stream, narrow band: rms", "random stream, narrow band: peak"
+SQUARE_ROOT = "one crossing x square root of the number"
+NARROW_SD, NARROW_PEAK = "random stream, narrow band, rms", "random stream, narrow band, peak"
 DEFLECTION = "deflection under own weight"
 PEAK, RMS = "peak acceleration", "rms acceleration"
 
@@ -147,14 +147,15 @@ def _single(now: Situation, one: Resonance) -> Iterator[Method]:
         f"{number(one.force)} N at {number(mode.frequency, 4)} Hz"
     )
     near = (
-        f"in the simulation {number(now.persons)} persons are on the deck on average; of {one.who} "
-        f"{percent(one.in_band)} have a pace within the half-power band of {mode.name}"
+        f"the simulation has {number(now.persons)} persons on the deck on average, of whom "
+        f"{number(one.persons * one.in_band)} at a time have a pace within the half-power band of {mode.name}, and it "
+        f"takes the largest peak of {span(now.window)}"
     )
     yield _method(
         now, mode, STEADY, TEXTBOOK, steady, **who,
         stands_for="one person at the mode's antinode, stepping there until the motion grows no more",
         assumes=f"F/(2 zeta M); {force}",
-        why=f"95 % of it takes {number(0.477 / mode.damping)} cycles, a crossing has {number(one.cycles)}; {near}",
+        why=f"95 % of it takes {number(0.477 / mode.damping)} load cycles, a crossing has {number(one.cycles)}; {near}",
     )  # fmt: skip
     yield _method(
         now, mode, CROSSING, f"moving-force factor, {TEXTBOOK}", steady * one.crossing, **who,
@@ -227,9 +228,9 @@ def _square_root(now: Situation, mode: Mode, found: list[Resonance]) -> Method:
             if not stationary(now)
             else f"{number(one.persons)} persons on the deck on average: the rule is for one and more"
         )
-        return _method(now, mode, RANDOM_SQUARE_ROOT, source, None, **who, note=note)
+        return _method(now, mode, SQUARE_ROOT, source, None, **who, note=note)
     return _method(
-        now, mode, RANDOM_SQUARE_ROOT, source, _crossing(one) * multiplier(one.persons), **who,
+        now, mode, SQUARE_ROOT, source, _crossing(one) * multiplier(one.persons), **who,
         stands_for=f"{number(one.persons)} persons on the deck who arrive at random, the average number",
         assumes=f"everybody in the mode's rhythm, phases at random; sqrt({number(one.persons)}) = "
         f"{number(math.sqrt(one.persons))} times one crossing",
@@ -268,9 +269,14 @@ def _stream(now: Situation, mode: Mode) -> Iterator[Method]:
         now, mode, NARROW_PEAK, peak_source, factor * sd,
         stands_for=f"95 % value of the peak of mode {mode.name} alone in {span(now.window)}",
         assumes=f"{assumes}; Gaussian, peak factor {number(factor)}",
-        why="few persons are in resonance at a time, so that the response comes in bursts and is not Gaussian; other "
-        "modes add",
+        why=f"{number(_in_band(now, mode))} persons are in the half-power band at a time: the fewer, the more the "
+        "response comes in bursts and the higher its peaks are above the Gaussian ones; other modes add",
     )  # fmt: skip
+
+
+def _in_band(now: Situation, mode: Mode) -> float:
+    """Persons on the deck within the half-power band of a mode, on average."""
+    return sum(one.persons * one.in_band for one in resonances(now, mode))
 
 
 def force_density(now: Situation, mode: Mode, stream: Stream) -> float:

@@ -57,7 +57,7 @@ class Resonance:
     @property
     def who(self) -> str:
         """The streams, in words."""
-        return " and ".join(self.streams)
+        return " and ".join(f"'{name}'" for name in self.streams) if len(self.streams) > 1 else self.streams[0]
 
 
 def reach(stream: Stream, harmonic: int) -> tuple[float, float]:
@@ -145,8 +145,9 @@ def _one(model: ModalModel, mode: Mode, alike: list[Stream], harmonic: int) -> R
         mode=mode, gait=stream.load.gait, streams=tuple(one.walkers.name for one in alike), harmonic=harmonic,
         pace=pace, speed=speed, weight=stream.walkers.weight.expectation(),
         load_factor=float(stream.load.factors(np.array([pace]))[0, harmonic - 1]),
-        line=best[3], path=best[2], top=abs(model.largest(mode, "vertical")[2]), simple=_simple(mode, s), crossing=best[1],
-        cycles=mode.frequency * model.length / speed, persons=persons, in_band=near / persons if persons else 0.0,
+        line=best[3], path=best[2], top=abs(model.largest(mode, "vertical")[2]), simple=_simple(mode, s),
+        crossing=best[1], cycles=mode.frequency * model.length / speed, persons=persons,
+        in_band=near / persons if persons else 0.0,
     )  # fmt: skip
 
 

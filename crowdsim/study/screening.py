@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 
 from crowdsim.bridge.modal import ModalModel, Mode
@@ -43,7 +43,7 @@ class Screened:
     why: str
 
 
-def screen(situations: tuple[Situation, ...]) -> Iterator[Screened]:
+def screen(situations: Sequence[Situation]) -> Iterator[Screened]:
     """Rows for every mode and direction: each harmonic that a range or a stream names, else one that none does."""
     busiest = max(situations, key=lambda s: s.persons)
     bare = busiest.bare
@@ -86,7 +86,7 @@ def _meets(band: Band, low: float, high: float) -> bool:
 
 
 def _row(
-    situations: tuple[Situation, ...], mode: Mode, direction: str, gait: str, harmonic: int,
+    situations: Sequence[Situation], mode: Mode, direction: str, gait: str, harmonic: int,
     states: tuple[float, float, float],
 ) -> Screened | None:  # fmt: skip
     low, high = min(states), max(states)
@@ -98,7 +98,7 @@ def _row(
         return None
     why = [f"{name}: {text}" for name, text in (("EUR 23984", eur), ("Setra", setra)) if text]
     if reached:
-        why.append("within the pace of " + " and ".join(reached))
+        why.append("within the pace of " + " and ".join(f"'{name}'" for name in reached))
     if direction != "vertical":
         why.append(f"{direction} forces are not simulated in this version")
     return Screened(
@@ -108,7 +108,7 @@ def _row(
 
 
 def _reached(
-    situations: tuple[Situation, ...], direction: str, gait: str, harmonic: int, frequencies: tuple[float, float]
+    situations: Sequence[Situation], direction: str, gait: str, harmonic: int, frequencies: tuple[float, float]
 ) -> tuple[str, ...]:
     found = [
         stream.walkers.name

@@ -56,16 +56,17 @@ def test_parameters_are_found_again(family: str, shape: float, realisations: int
 
 @pytest.mark.parametrize(("family", "shape", "realisations", "windows"), LAWS, ids=IDS)
 def test_standard_errors_are_those_of_the_trials(family: str, shape: float, realisations: int, windows: int) -> None:
-    """Root mean square of the stated errors against the spread of the estimates over trials.
+    """Median of the stated errors against the spread of the estimates over trials.
 
     The spread of 1000 trials is known to 2.2 %: 4 of them are 9 % (false alarm 6e-5 each); the stated errors are of
-    first order, good to a few in sqrt(n): 3 % more.
+    first order, good to a few in n: 5 % more at 150 to 300 realisations. Windows taken for independent would miss by a
+    factor 1/sqrt(1.8) = 0.75.
     """
     found = fits(family, shape, realisations, windows)
-    stated = np.sqrt(np.mean([np.diag(f.covariance) for f in found], axis=0))
+    stated = np.sqrt(np.median([np.diag(f.covariance) for f in found], axis=0))
     names = ("location", "scale", "shape")[: stated.size]
     spread = np.array([np.std([getattr(f, n) for f in found]) for n in names])
-    assert stated / spread == pytest.approx(1.0, abs=0.12)
+    assert stated / spread == pytest.approx(1.0, abs=0.14)
 
 
 def band(low: float, high: float) -> tuple[float, float]:

@@ -19,8 +19,8 @@ MODULES = {
     ".".join(("crowdsim", *path.relative_to(ROOT).with_suffix("").parts)).removesuffix(".__init__"): path
     for path in sorted(ROOT.rglob("*.py"))
 }
-LOWER = ("bridge", "crowd", "loads", "dynamics", "response")
-HIGHER = ("scenario", "study", "results", "console", "cli")
+LOWER = ("bridge", "crowd", "loads", "dynamics", "response", "guides")
+HIGHER = ("scenario", "study", "results", "plots", "console", "cli")
 OUTSIDE = ("h5py", "pydantic", "typer", "rich", "pint", "matplotlib")
 
 
@@ -68,15 +68,17 @@ def test_a_lower_room_never_sees_a_scenario_a_file_or_the_console(module: str) -
 @pytest.mark.parametrize(
     ("rooms", "forbidden"),
     [
-        (("bridge",), ("crowd", "loads", "dynamics", "response")),
-        (("crowd",), ("bridge", "loads", "dynamics", "response")),
-        (("loads",), ("bridge", "crowd", "dynamics", "response")),
-        (("dynamics",), ("bridge", "crowd", "loads", "response")),
-        (("response",), ("bridge", "crowd", "loads", "dynamics")),
-        (("scenario",), ("study", "results", "console", "cli")),
-        (("results",), ("scenario", "study", "console", "cli", "bridge", "crowd", "loads", "dynamics")),
-        (("study",), ("console", "cli")),
-        (("console",), ("cli",)),
+        (("bridge",), ("crowd", "loads", "dynamics", "response", "guides")),
+        (("crowd",), ("bridge", "loads", "dynamics", "response", "guides")),
+        (("loads",), ("bridge", "crowd", "dynamics", "response", "guides")),
+        (("dynamics",), ("bridge", "crowd", "loads", "response", "guides")),
+        (("response",), ("bridge", "crowd", "loads", "dynamics", "guides")),
+        (("guides",), ("bridge", "crowd", "loads", "dynamics", "response")),
+        (("scenario",), ("study", "results", "plots", "console", "cli")),
+        (("results",), ("scenario", "study", "plots", "console", "cli", "bridge", "crowd", "loads", "dynamics")),
+        (("study",), ("plots", "console", "cli")),
+        (("plots",), ("console", "cli")),
+        (("console",), ("plots", "cli")),
         (("errors",), (*LOWER, *HIGHER)),
     ],
 )
@@ -85,6 +87,22 @@ def test_imports_point_down_the_path(rooms: tuple[str, ...], forbidden: tuple[st
         if room(module) in rooms:
             seen = {room(name) for name, _ in imported(path) if name.startswith("crowdsim.")}
             assert not seen & set(forbidden), module
+
+
+@pytest.mark.parametrize(
+    ("room_of", "shared"),
+    [
+        ("guides", {"criterion", "catalogue"}),
+        ("plots", {"style", "labels", "draw"}),
+        ("console", {"base", "formulas", "verdicts", "screening", "summary"}),
+    ],
+)
+def test_no_import_sideways(room_of: str, shared: set[str]) -> None:
+    """A guide, a figure, a screen stands alone but for what its room shares."""
+    for module, path in MODULES.items():
+        if room(module) == room_of and module.split(".")[-1] not in ("catalogue", "draw", room_of):
+            seen = {name.split(".")[2] for name, _ in imported(path) if name.startswith(f"crowdsim.{room_of}.")}
+            assert seen <= shared, module
 
 
 def test_numba_stands_in_the_kernels_alone() -> None:

@@ -8,7 +8,14 @@ from collections.abc import Callable
 import numpy as np
 import pytest
 
-from crowdsim.response.extreme_likelihood import derivatives, growth, growth_slope, log_likelihood, log_ratio
+from crowdsim.response.extreme_likelihood import (
+    derivatives,
+    growth,
+    growth_slope,
+    log_likelihood,
+    log_ratio,
+    log_ratio_slopes,
+)
 from crowdsim.response.extremes import ExtremeFit, fit, goodness
 
 pytestmark = pytest.mark.filterwarnings("error")
@@ -39,8 +46,8 @@ def test_derivatives_are_those_of_the_likelihood(shape: float) -> None:
     for i in range(3):
         step = 1e-5 * np.eye(3)[i]
         slope = (log_likelihood(x, here + step) - log_likelihood(x, here - step)) / 2e-5
-        assert scores[:, i].sum() == pytest.approx(slope, rel=1e-6, abs=1e-6 * np.abs(scores[:, i]).sum())
-        bend = (derivatives(x, here + step)[0].sum(axis=0) - derivatives(x, here - step)[0].sum(axis=0)) / 2e-5
+        assert scores[i].sum() == pytest.approx(slope, rel=1e-6, abs=1e-6 * np.abs(scores[i]).sum())
+        bend = (derivatives(x, here + step)[0].sum(axis=1) - derivatives(x, here - step)[0].sum(axis=1)) / 2e-5
         assert hessian[i] == pytest.approx(bend, rel=1e-6, abs=1e-6 * np.abs(hessian).max())
 
 
@@ -49,9 +56,9 @@ def test_derivatives_are_those_of_the_likelihood(shape: float) -> None:
 def test_series_and_closed_forms_meet(edge: float, sign: float) -> None:
     """Either side of the change-over; what is left is the functions' slope, of order 1, over 2e-9 of the edge."""
     two = sign * edge * np.array([1.0 - 1e-9, 1.0 + 1e-9])
-    for function in (growth, growth_slope, *(lambda u, i=i: log_ratio(u)[i] for i in range(3))):  # type: ignore[misc]
-        before, after = function(two)
-        assert before == pytest.approx(after, rel=1e-11 + 4e-9 * edge)
+    slopes = log_ratio_slopes(two, log_ratio(two))
+    for before, after in (growth(two), growth_slope(two), log_ratio(two), *slopes):
+        assert before == pytest.approx(after, abs=1e-11 + 2e-9 * edge * 3.0)  # no slope is above 3
 
 
 def test_gumbel_is_the_limit_of_gev() -> None:
@@ -118,8 +125,8 @@ def test_ends_of_the_law() -> None:
     assert low == 0.0
     # the sample does not exclude a larger value; the limit is the least of those at smaller ones
     inside = bounded.exceedance_interval(np.linspace(0.5, 0.999, 500))[1]
-    assert 0.0 < high <= inside.min() < inside[0]
-    assert high == pytest.approx(inside.min(), rel=1e-3)  # the values' grid against that of the variates
+    assert 0.0 < high < inside[0]
+    assert high == pytest.approx(inside.min(), rel=1e-4)  # the least is sought on variates 0.01 apart
     assert heavy.exceedance_interval(-0.1)[1] == 1.0
     assert heavy.exceedance_interval(-0.1)[0] > 0.95
 
@@ -130,8 +137,8 @@ def test_limits_of_the_exceedance_fall_with_the_value(shape: float) -> None:
     low, high = law(shape).exceedance_interval(x)
     value = law(shape).exceedance(x)
     assert np.all((low >= 0.0) & (low <= value) & (value <= high) & (high <= 1.0))
-    assert np.all(np.diff(low) <= 1e-12)  # rounding; the repair's steps are on a grid of their own
-    assert np.all(np.diff(high) <= 1e-12)
+    for limit in (low, high):  # the least and largest are sought on variates 0.01 apart: good to about 0.01^2
+        assert np.all(np.diff(limit) <= 1e-4 * limit[1:])
     one = np.array([law(shape).exceedance_interval(float(v)) for v in x[::70]])
     assert np.array_equal(one[:, 0], low[::70])
     assert np.array_equal(one[:, 1], high[::70])
@@ -171,19 +178,29 @@ def test_extrapolation_begins_beyond_the_sample() -> None:
     assert law(-0.2).extrapolates_value(1.2)
 
 
-def test_dependent_windows_widen_the_errors() -> None:
-    """Every realisation's value written twice holds no more than once: the sandwich gives the errors of single values.
+@pytest.mark.parametrize("family", ["gumbel", "gev"])
+def test_covariance_of_groups_is_that_of_leaving_one_out(family) -> None:  # type: ignore[no-untyped-def]
+    """The jackknife sum of squared changes with real refits; one Newton step from the whole differs by a few percent."""
+    rows = PEAKS.reshape(60, 2)
+    whole = fit(rows, family)
+    free = whole.covariance.shape[0]
+    refits = [fit(np.delete(rows, i, axis=0), family) for i in range(60)]
+    change = np.array([[f.location - whole.location, f.scale - whole.scale, f.shape - whole.shape] for f in refits])
+    expected = np.sqrt(np.diag(change.T @ change))[:free]
+    assert np.sqrt(np.diag(whole.covariance)) == pytest.approx(expected, rel=0.05)
 
-    With g the score of one value, H doubles and the summed scores too: (2H)^-1 (4 sum g g^T) (2H)^-1.
-    """
+
+def test_dependent_windows_widen_the_errors() -> None:
+    """Every realisation's value written twice holds no more than once."""
     twice = np.stack([PEAKS, PEAKS], axis=1)
     single, double = fit(PEAKS, "gev"), fit(twice, "gev")
     assert (double.location, double.scale, double.shape) == pytest.approx(
         (single.location, single.scale, single.shape), abs=1e-9
     )
-    scores, hessian = derivatives(PEAKS, np.array([single.location, single.scale, single.shape]))
-    inverse = np.linalg.inv(hessian)
-    assert double.covariance == pytest.approx(inverse @ (scores.T @ scores) @ inverse, rel=1e-6)
+    # d = (2H - 2H_i)^-1 2 g_i: the doubling cancels
+    scores, hessians = derivatives(PEAKS[:, None], np.tile([single.location, single.scale, single.shape], (120, 1)))
+    d = np.linalg.solve(hessians.sum(axis=0) - hessians, scores)[..., 0]
+    assert double.covariance == pytest.approx(d.T @ d, rel=1e-6)
     assert (double.count, double.groups) == (240, 120)
     assert "240 values in 120 independent groups" in double.text()
     naive = fit(twice.ravel(), "gev")

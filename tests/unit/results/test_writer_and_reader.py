@@ -30,7 +30,7 @@ def head(name: str = "day", **changes: Any) -> CaseHead:
     values: dict[str, Any] = {
         "name": name, "time_step": 0.005, "warm_up": 100.0, "duration": 750.0, "window": 240.0, "windows": WINDOWS,
         "people": "mass", "persons": 8.5, "points": POINTS, "directions": DIRECTIONS, "deck_s": DECK_S,
-        "deck_e": DECK_E,
+        "deck_e": DECK_E, "criterion": "eur-23984",
         "modes": [("V1", 1.9, 0.005, 39000.0, 500.0), ("L1", 0.9, 0.01, 4e4, 0.0)],
         "assumptions": ["perfect gait", "äöü m/s²"], "target": "CL2", "limit": None, "step": {"peak_error": 1e-4},
     }  # fmt: skip
@@ -43,6 +43,7 @@ def rows(count: int, seed: int = 1) -> list[SimpleNamespace]:
         SimpleNamespace(
             peak=random.random(3), rms=random.random(3), running_rms_max=random.random(3), peak_time=random.random(3),
             window_peak=random.random((WINDOWS, 3)), envelope=random.random(len(DIRECTIONS) * 3 * 5),
+            deck_window_peak=random.random((WINDOWS, len(DIRECTIONS))),
         )
         for _ in range(count)
     ]  # fmt: skip
@@ -85,6 +86,7 @@ def test_groups_datasets_and_shapes_of_the_contract(tmp_path: Path) -> None:
             "points/name": (3,), "points/s": (3,), "points/e": (3,), "points/direction": (3,),
             "realisations/peak": (4, 3), "realisations/rms": (4, 3), "realisations/running_rms_max": (4, 3),
             "realisations/crossings": (4,), "deck/s": (5,), "deck/e": (3,),
+            "deck/vertical/window_peak": (4, WINDOWS), "deck/lateral/window_peak": (4, WINDOWS),
             "deck/vertical/peak_envelope": (4, 3, 5), "deck/lateral/peak_envelope": (4, 3, 5),
             "histories/0/time": (10,), "histories/0/acceleration": (10, 3), "histories/2/time": (5,),
         }  # fmt: skip
@@ -132,6 +134,8 @@ def test_what_was_written_comes_back_to_the_last_bit(tmp_path: Path) -> None:
         for d, direction in enumerate(DIRECTIONS):
             whole = np.stack([r.envelope.reshape(2, 3, 5)[d] for r in expected])
             np.testing.assert_array_equal(case.envelope[direction], whole)
+            anywhere = np.stack([r.deck_window_peak[:, d] for r in expected])
+            np.testing.assert_array_equal(case.deck_window_peak[direction], anywhere)
         assert (case.points.name, case.points.direction) == (
             tuple(p[0] for p in POINTS), tuple(p[3] for p in POINTS),
         )  # fmt: skip
@@ -174,6 +178,7 @@ def test_target_and_limit_are_there_when_given(tmp_path: Path) -> None:
         results.finish({})
     with h5py.File(tmp_path / "run.h5") as file:
         assert file["cases/0"].attrs["target"] == "CL2"
+        assert file["cases/0"].attrs["criterion"] == "eur-23984"
         assert "limit" not in file["cases/0"].attrs
         assert file["cases/1"].attrs["limit"] == 0.7
         assert "target" not in file["cases/1"].attrs

@@ -127,8 +127,10 @@ def test_of_a_long_record_the_surroundings_of_the_peak_are_kept(scenario: Callab
 
 
 def test_a_record_shorter_than_the_comfort_window_has_no_windows(scenario: Callable[..., Scenario]) -> None:
-    (case,) = simulate(scenario(("duration = 900.0", "duration = 120.0")), realisations=2).cases
+    asked = (("duration = 900.0", "duration = 120.0"), ("", "[comfort]\nwindow = 240\n"))
+    (case,) = simulate(scenario(*asked), realisations=2).cases
     assert case.window_peak.shape == (2, 0, 1)
+    assert case.deck_window_peak["vertical"].shape == (2, 0)
     assert np.all(case.peak > 0.0)
 
 

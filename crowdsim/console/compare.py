@@ -1,0 +1,78 @@
+"""What `crowdsim compare` shows of a run: classes, windows, exceedance, every formula and why it differs."""
+
+from __future__ import annotations
+
+from crowdsim.console import formulas, verdicts
+from crowdsim.console.base import CAUTION, Console, interval_text
+from crowdsim.console.screening import screening
+from crowdsim.console.summary import not_varied
+from crowdsim.response.windows import Proportion
+from crowdsim.results.summary import CaseSummary, PointSummary
+from crowdsim.results.texts import number, percent, span
+from crowdsim.study.compare import Comparison
+
+
+def compare(console: Console, comparison: Comparison) -> None:
+    """Table of cases, then case by case the verdict, the points, the formulas."""
+    if console.json:
+        console.data(comparison.as_dict())
+        return
+    said = comparison.summary
+    console.heading(said.title)
+    console.line()
+    verdicts.table(console, said.cases)
+    for case in said.cases:
+        console.line()
+        console.heading(f"Case {case.name}")
+        for deck in case.deck:
+            if deck.judgement is not None:
+                verdicts.verdict(console, deck.judgement)
+                console.line(f"The deck moves most at s = {number(deck.s)} m, e = {number(deck.e)} m.")
+            else:
+                console.line(f"{deck.direction}: no force acts in this direction in this version; not judged.")
+        _points(console, case)
+        rows = comparison.leading(case.name)
+        if rows:
+            formulas.beside(console, rows, title="Hand formulas beside the simulated numbers")
+            console.line(
+                "Simulated: for a peak, that of the whole deck and all modes in one window, as in the table of cases; "
+                "for an rms, its mean over the realisations where the mode moves most. Other modes: --json."
+            )
+        if case is said.cases[0]:  # alike in the others
+            console.items("What they stand for, and why they differ", formulas.reasons(rows))
+    console.line()
+    screening(console, comparison.estimates.screening)
+    console.line()
+    console.line(not_varied(comparison))
+    console.line(CAUTION)
+
+
+def _points(console: Console, case: CaseSummary) -> None:
+    judged = next((d.judgement for d in case.deck if d.judgement is not None), None)
+    record, window = span(case.duration), span(judged.window) if judged else "a window"
+    place = [("at", "k"), ("s, m", "r"), ("e, m", "r"), ("direction", "k")]
+    rows = []
+    for point in case.points:
+        p, w = point.peak.p95, point.window_peak
+        rows.append(
+            [*_place(point), number(p.value), interval_text(p.low, p.high), "-" if w is None else number(w.value),
+             "-" if w is None else interval_text(w.low, w.high)]
+        )  # fmt: skip
+    share = f"{100 * judged.value.share:g} %" if judged else "95 %"
+    columns = [*place, (f"95 % in {record}", "r"), ("interval", "r"), (f"{share} in {window}", "r"), ("interval", "r")]
+    if not console.wide:
+        keep = (0, 1, 2, 6, 7)
+        columns, rows = [columns[i] for i in keep], [[row[i] for i in keep] for row in rows]
+    console.table("Peaks where each mode moves most, m/s2", columns, rows)
+    if judged is not None and judged.limit is not None:
+        rows = [[*_place(p), _chance(p.exceedance), _chance(p.window_exceedance)] for p in case.points]
+        columns = [*place, (f"in {record}", "r"), (f"in {window}", "r")]
+        console.table(f"Chance of a peak above {number(judged.limit)} m/s2 there", columns, rows)
+
+
+def _place(point: PointSummary) -> list[str]:
+    return [point.name, number(point.s), number(point.e), point.direction]
+
+
+def _chance(share: Proportion | None) -> str:
+    return "-" if share is None else f"{percent(share.value)} ({percent(share.low)} to {percent(share.high)})"

@@ -1,0 +1,78 @@
+"""Hand formulas, alone and beside simulated numbers."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from crowdsim.console.base import Console, interval_text, or_dash
+from crowdsim.results.texts import number
+from crowdsim.study.compare import Compared
+from crowdsim.study.estimate import Method
+
+_ORDINAL = {None: "", 1: "1st", 2: "2nd", 3: "3rd"}
+
+
+def harmonic(method: Method) -> str:
+    """Which harmonic of whose pace, as a person says it."""
+    if method.harmonic is None:
+        return ""
+    return _ORDINAL.get(method.harmonic, f"{method.harmonic}th")
+
+
+def _who(method: Method) -> str:
+    """The streams, or how many where their names are long."""
+    many = method.stream.count("' and '") + 1
+    return f"{many} streams" if many > 1 and len(method.stream) > 24 else method.stream or "all"
+
+
+def formulas(console: Console, methods: Sequence[Method]) -> None:
+    """What each formula gives."""
+    rows = [
+        [m.mode, harmonic(m), _who(m), m.name, m.measure.split()[0], or_dash(m.value), m.unit]
+        for m in methods
+        if m.value is not None
+    ]
+    columns = [("mode", "k"), ("harmonic", "k"), ("who", "l"), ("formula", "k"), ("measure", "k"), ("value", "r"),
+               ("unit", "k")]  # fmt: skip
+    if not console.wide:
+        keep = (0, 1, 3, 5, 6)
+        columns, rows = [columns[i] for i in keep], [[row[i] for i in keep] for row in rows]
+    console.table("Hand formulas", columns, rows)
+    nothing: dict[str, list[str]] = {}
+    for m in methods:
+        if m.value is None:
+            nothing.setdefault(m.note, []).append(f"{m.name} ({m.mode})")
+    console.items("No number", [f"{', '.join(names)}: {note}" for note, names in nothing.items()])
+
+
+def meanings(methods: Sequence[Method]) -> list[str]:
+    """What each formula stands for and assumes, by its first use."""
+    seen: dict[str, str] = {}
+    for m in methods:
+        if m.value is not None:
+            text = f"{m.name} ({m.mode}): {m.stands_for}; {m.assumes}. Source: {m.source}"
+            seen.setdefault(m.name, text)
+    return list(seen.values())
+
+
+def beside(console: Console, rows: Sequence[Compared], *, title: str) -> None:
+    """Formula, simulated, ratio with its interval."""
+    cells = [
+        [r.method.name, r.method.mode, harmonic(r.method), or_dash(r.method.value), or_dash(r.simulated),
+         "-" if r.ratio is None else f"{number(r.ratio)}", interval_text(r.ratio_low, r.ratio_high)]
+        for r in rows
+    ]  # fmt: skip
+    columns = [("formula", "k"), ("mode", "k"), ("harmonic", "k"), ("gives, m/s2", "r"), ("simulated", "r"),
+               ("ratio", "r"), ("its 95 % interval", "r")]  # fmt: skip
+    if not console.wide:
+        columns, cells = columns[:2] + columns[3:6], [row[:2] + row[3:6] for row in cells]
+    console.table(title, columns, cells)
+
+
+def reasons(rows: Sequence[Compared]) -> list[str]:
+    """Why each formula differs from the simulation."""
+    return [
+        f"{r.method.name} ({r.method.mode}): {r.method.stands_for}; {r.method.assumes}. Differs: {r.method.why}"
+        for r in rows
+        if r.method.value is not None
+    ]

@@ -1,0 +1,122 @@
+"""The hand formulas beside the simulated numbers of the same case: ratios with their intervals."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import asdict, dataclass
+from pathlib import Path
+from typing import Any
+
+from crowdsim.results.reader import open_file
+from crowdsim.results.summary import CaseSummary, Summary, summarise
+from crowdsim.scenario.reader import Scenario, parse_scenario
+from crowdsim.study.estimate import PEAK, RMS, Estimates, Method, estimate
+
+_TWO_SIDED = 1.959964  # standard errors of a mean, 95 %
+
+
+@dataclass(frozen=True)
+class Compared:
+    """A formula and the simulated number that stands nearest to it, with its 95 % interval.
+
+    simulated : the 95 % value of the peak anywhere on the deck in a comfort window, or the mean rms
+    at the mode's antinode; ratio : formula over simulated; None where one of them is missing
+    """
+
+    method: Method
+    simulated: float | None
+    simulated_low: float | None
+    simulated_high: float | None
+    ratio: float | None
+    ratio_low: float | None
+    ratio_high: float | None
+
+
+@dataclass(frozen=True)
+class Comparison:
+    """A run in numbers, and the formulas beside it, case by case."""
+
+    summary: Summary
+    estimates: Estimates
+    rows: tuple[Compared, ...]
+
+    def of(self, case: str) -> tuple[Compared, ...]:
+        """Those of one case."""
+        return tuple(r for r in self.rows if r.method.case == case)
+
+    def leading(self, case: str) -> tuple[Compared, ...]:
+        """Those of the mode for which one crossing is largest, with the harmonic that makes it so."""
+        here = [r for r in self.of(case) if r.method.value is not None and r.method.measure == PEAK]
+        if not here:
+            return ()
+        top = max((r.method for r in here if r.method.harmonic), key=_crossing, default=here[0].method)
+        same = (top.harmonic, top.stream)
+        return tuple(
+            r
+            for r in self.of(case)
+            if r.method.mode == top.mode
+            and r.method.measure in (PEAK, RMS)
+            and (r.method.harmonic is None or (r.method.harmonic, r.method.stream) == same)
+        )
+
+    def as_dict(self) -> dict[str, Any]:
+        """For JSON."""
+        return {
+            **self.summary.as_dict(),
+            "comparison": [
+                {**asdict(r.method), **{k: v for k, v in asdict(r).items() if k != "method"}} for r in self.rows
+            ],
+            "screening": [asdict(s) for s in self.estimates.screening],
+        }
+
+
+def _crossing(method: Method) -> float:
+    return method.value if method.value is not None and method.name.endswith("force moving") else -1.0
+
+
+def compare(summary: Summary, scenario: Scenario) -> Comparison:
+    """Puts the formulas for `scenario` beside the numbers of a run of it."""
+    estimates = estimate(scenario)
+    by_name = {c.name: c for c in summary.cases}
+    rows = [_compared(m, by_name[m.case]) for m in estimates.methods if m.case in by_name]
+    return Comparison(summary, estimates, tuple(rows))
+
+
+def compare_file(path: str | Path, *, percentile: float = 0.95, limit: float | None = None) -> Comparison:
+    """The same for a results file, whose scenario it holds.
+
+    percentile, limit : in place of 95 % and of what the cases ask
+
+    Raises ResultsError for a file that is none of ours, InputError where its scenario cannot be read any more.
+    """
+    with open_file(path) as file:
+        scenario = parse_scenario(str(file.attrs["scenario"]), f"scenario within {path}")
+    return compare(summarise(path, scenario.title, percentile=percentile, limit=limit), scenario)
+
+
+def _compared(method: Method, case: CaseSummary) -> Compared:
+    simulated, low, high = _simulated(method, case)
+    value = method.value
+    if value is None or not simulated:
+        return Compared(method, simulated, low, high, None, None, None)
+    return Compared(
+        method, simulated, low, high, value / simulated,
+        value / high if high else None, value / low if low else None,
+    )  # fmt: skip
+
+
+def _simulated(method: Method, case: CaseSummary) -> tuple[float | None, float | None, float | None]:
+    if method.measure == PEAK:
+        for deck in case.deck:
+            if deck.direction == method.direction and deck.judgement is not None:
+                value = deck.judgement.value
+                return value.value, value.low, value.high
+    if method.measure == RMS:
+        for point in case.points:
+            modes = point.name.removesuffix(f" {point.direction}").split("+")
+            if point.direction == method.direction and method.mode in modes:
+                if point.rms.sd is None:
+                    return point.rms.mean, None, None
+                half = _TWO_SIDED * point.rms.sd / math.sqrt(point.rms.count)
+                return point.rms.mean, point.rms.mean - half, point.rms.mean + half
+    return None, None, None
