@@ -5,7 +5,7 @@ from __future__ import annotations
 import signal
 import sys
 from pathlib import Path
-from typing import Annotated, NoReturn
+from typing import Annotated, Literal, NoReturn
 
 import typer
 
@@ -30,6 +30,10 @@ Count = Annotated[
 Seed = Annotated[int | None, typer.Option("--seed", min=0, max=2**63 - 1, help="Default: the scenario's.", metavar="S")]
 Workers = Annotated[
     int | None, typer.Option("--workers", min=1, max=1024, help="Threads; changes no number.", metavar="W")
+]
+Fit = Annotated[
+    Literal["gumbel", "gev"] | None,
+    typer.Option("--fit", help="Fit this law to the window peaks as well: gumbel or gev.", metavar="LAW"),
 ]
 Json = Annotated[bool, typer.Option("--json", help="Print the summary for programs.")]
 Quiet = Annotated[bool, typer.Option("--quiet", "-q", help="Print nothing but errors.")]
@@ -113,6 +117,7 @@ def compare(
         float | None,
         typer.Option("--limit", help="Judge by this limit, m/s2, in place of what was asked.", metavar="A"),
     ] = None,
+    fit: Fit = None,
     json: Json = False,
 ) -> None:
     """Judge the cases of a run; put the hand formulas beside the simulated numbers."""
@@ -123,7 +128,60 @@ def compare(
 
     if limit is not None and not 0.0 < limit < 1e3:
         raise InputError("--limit", [Problem("limit", f"{limit:g} m/s2 given", "above 0, in m/s2")])
-    show(Console(json=json), compare_file(run, percentile=percentile, limit=limit))
+    show(Console(json=json), compare_file(run, percentile=percentile, limit=limit, family=fit))
+
+
+@app.command()
+def plot(
+    run: RunFile,
+    what: Annotated[str, typer.Argument(help="history, envelope, exceedance, modes or people.", metavar="WHAT")],
+    out: Annotated[Path, typer.Option("--out", "-o", help="Figure to write: png, svg or pdf.", metavar="FIGURE")],
+    case: CaseName = None,
+    point: Annotated[str | None, typer.Option("--point", help="Of the history.", metavar="NAME")] = None,
+    fit: Fit = None,
+    width: Annotated[float, typer.Option("--width", help="Of the figure, mm.", metavar="MM")] = 170.0,
+) -> None:
+    """Draw a figure of a run. Without --case, the first case."""
+    from crowdsim.plots.draw import draw
+    from crowdsim.study.compare import compare_file, marks
+
+    hand = []
+    if what == "exceedance":
+        comparison = compare_file(run)
+        hand = marks(comparison, case or comparison.summary.cases[0].name)
+    typer.echo(draw(run, what, out, case=case, point=point, fit=fit, marks=hand, width=width))
+
+
+@app.command()
+def sensitivity(
+    scenario: ScenarioFile,
+    out: Annotated[
+        Path | None, typer.Option("--out", "-o", help="Bar figure to write: png, svg or pdf.", metavar="FIGURE")
+    ] = None,
+    into: Annotated[
+        Path | None, typer.Option("--into", help="Results file of the same scenario to keep it in.", metavar="RUN.h5")
+    ] = None,
+    case: CaseName = None,
+    realisations: Count = None,
+    seed: Seed = None,
+    workers: Workers = None,
+    width: Annotated[float, typer.Option("--width", help="Of the figure, mm.", metavar="MM")] = 170.0,
+    json: Json = False,
+    quiet: Quiet = False,
+) -> None:
+    """What the 95 % peak hangs on: one change at a time, with the same random numbers."""
+    from crowdsim.console.base import Console
+    from crowdsim.console.progress import RunProgress
+    from crowdsim.console.sensitivity import sensitivity as show
+    from crowdsim.results.sensitivity import write_sensitivity
+    from crowdsim.scenario.reader import read_scenario
+    from crowdsim.study.sensitivity import sensitivity as study
+
+    console = Console(quiet=quiet, json=json)
+    read = read_scenario(scenario)
+    with RunProgress(console) as progress:
+        result = study(read, case=case, realisations=realisations, seed=seed, workers=workers, progress=progress)
+    show(console, result)
 
 
 @app.command()

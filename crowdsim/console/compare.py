@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from crowdsim.console import formulas, verdicts
 from crowdsim.console.base import CAUTION, Console, interval_text
+from crowdsim.console.fits import fits
 from crowdsim.console.screening import screening
 from crowdsim.console.summary import not_varied
 from crowdsim.response.windows import Proportion
@@ -40,10 +41,14 @@ def compare(console: Console, comparison: Comparison) -> None:
             )
         if case is said.cases[0]:  # alike in the others
             console.items("What they stand for, and why they differ", formulas.reasons(rows))
+    if comparison.fits:
+        console.line()
+        fits(console, comparison.fits)
     console.line()
     screening(console, comparison.estimates.screening)
     console.line()
-    console.line(not_varied(comparison))
+    for line in not_varied(comparison):
+        console.line(line)
     console.line(CAUTION)
 
 

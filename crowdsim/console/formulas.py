@@ -61,6 +61,7 @@ def beside(console: Console, rows: Sequence[Compared], *, title: str) -> None:
         [r.method.name, r.method.mode, harmonic(r.method), or_dash(r.method.value), or_dash(r.simulated),
          "-" if r.ratio is None else f"{number(r.ratio)}", interval_text(r.ratio_low, r.ratio_high)]
         for r in rows
+        if r.method.value is not None
     ]  # fmt: skip
     columns = [("formula", "k"), ("mode", "k"), ("harmonic", "k"), ("gives, m/s2", "r"), ("simulated", "r"),
                ("ratio", "r"), ("its 95 % interval", "r")]  # fmt: skip

@@ -26,20 +26,24 @@ def summary(console: Console, comparison: Comparison, *, json: bool = True) -> N
     if len(said.cases) > 1:
         verdicts.table(console, said.cases)
         console.line()
-    console.line(not_varied(comparison))
+    for line in not_varied(comparison):
+        console.line(line)
     console.items("Assumed" if len(said.cases) == 1 else "Assumed in every case", shared)
     console.line()
     console.line(CAUTION)
     console.out.print(f"Results: {said.file} (seed {said.seed}, crowdsim {said.version})", soft_wrap=True)
 
 
-def not_varied(comparison: Comparison) -> str:
-    """What the intervals leave out, and where that would be found."""
-    return (
-        "The intervals speak of the number of realisations alone. Not varied here: load set, pace, step length, "
-        "damping, frequency, the people's effect, density; any of them can outweigh the interval. "
-        "`crowdsim sensitivity` shows which matter most for this bridge."
-    )
+def not_varied(comparison: Comparison) -> list[str]:
+    """What the intervals leave out, and how much that weighs where a study of it is in the file."""
+    alone = "The intervals speak of the number of realisations alone."
+    known = [f"{s.text()} {s.not_varied_text()}".strip() for s in comparison.sensitivities]
+    if known:
+        return [f"{alone} A sensitivity study is in the file.", *known]
+    return [
+        f"{alone} Not varied: load set, pace, step length, damping, frequency, the people's effect, density; any of "
+        "them can outweigh the interval. `crowdsim sensitivity` shows which matter most for this bridge."
+    ]
 
 
 def _case(console: Console, comparison: Comparison, case: CaseSummary, own: list[str]) -> None:

@@ -13,19 +13,20 @@ from typing import Any, Literal
 import numpy as np
 from matplotlib.axes import Axes
 from matplotlib.lines import Line2D
-from matplotlib.patheffects import withStroke
+from matplotlib.patheffects import AbstractPathEffect, withStroke
 from matplotlib.text import Annotation, Text
 from matplotlib.transforms import Bbox
 from numpy.typing import NDArray
 
-from crowdsim.plots.style import BLACK, GREY, SMALL, home
+from crowdsim.plots.style import BLACK, GREY, MM, SMALL, home, text_width, tied, wrapped
 
 Floats = NDArray[np.float64]
 Side = Literal["right", "top"]
-_HALO = [withStroke(linewidth=1.8, foreground="white")]
-_GAP = 1.5  # pt kept free around a label
+_HALO: list[AbstractPathEffect] = [withStroke(linewidth=1.6, foreground="white")]
+_GAP = 2  # pt kept free around a label
 _NEAR = 5.0  # pt, up to which a label stands beside what it names and needs no leader
 _ANCHORS = 60
+_TRIALS = 3000  # places looked at in the order of their cost
 
 
 @dataclass
@@ -50,8 +51,15 @@ class Labels:
         made = self.ax.text(1.015, y, text, transform=where, size=SMALL, color=color, va="center", ha="left")
         self.edge["right"].append((y, made))
 
-    def top(self, x: float, text: str, color: str = BLACK) -> None:
-        """Names a place, above the top edge."""
+    def top(self, low: float, high: float, text: str, color: str = BLACK, marks: Sequence[float] = ()) -> None:
+        """Names a span, above the top edge, clear of `marks` where it can be. Limits of the axis are set before."""
+        begin, end = self.ax.get_xlim()
+        # the panel is about as wide as the figure without the room for its labels
+        half = 0.5 * (text_width(text, SMALL) + 1.5) * (end - begin) / (home(self.ax).get_figwidth() / MM - 30.0)
+        middle = 0.5 * (low + high)
+        tried = np.linspace(middle, low + half, 12), np.linspace(middle, high - half, 12)
+        clear = [t for pair in zip(*tried, strict=True) for t in pair if all(abs(t - m) > half for m in marks)]
+        x = float(clear[0]) if clear and high - low > 2.0 * half else middle
         where = self.ax.get_xaxis_transform()
         made = self.ax.text(x, 1.02, text, transform=where, size=SMALL, color=color, va="bottom", ha="center")
         self.edge["top"].append((x, made))
@@ -64,7 +72,7 @@ def settle(labels: Iterable[Labels]) -> None:
     fig.draw_without_rendering()
     for group in wanted:
         for side in ("right", "top"):
-            _spread(group, side)  # type: ignore[arg-type]
+            _spread(group, side)
         _Room(group.ax).place(group.inside)
     fig.set_layout_engine("none")
 
@@ -121,7 +129,7 @@ def _spread(group: Labels, side: Side) -> None:
             out = 1.005 + away
             begin = (was - low) / (high - low)
             ends = ([1.0, out], [begin, share]) if along else ([begin, share], [1.0, out])
-            leader = Line2D(*ends, transform=ax.transAxes, color=GREY, lw=0.4, clip_on=False, gid="leader")
+            leader = Line2D(*ends, transform=ax.transAxes, color=GREY, lw=0.5, clip_on=False, gid="leader")
             leader.set_in_layout(False)
             ax.add_artist(leader)
         text.set_position((1.015 + (away if abs(now - was) > 2.0 * point else 0.0), share) if along else (share, 1.02))
@@ -136,121 +144,154 @@ class _Room:
         self.ax = ax
         self.point = home(ax).dpi / 72.0
         box = ax.get_window_extent()
-        self.origin = np.array([box.x0, box.y0])
-        self.width, self.height = max(int(box.width / self.point), 1), max(int(box.height / self.point), 1)
+        self.origin, self.scale = np.array([box.x0, box.y0]), np.array([box.width, box.height]) / self.point
+        self.width, self.height = max(int(self.scale[0]), 1), max(int(self.scale[1]), 1)
         self.lines = np.zeros((self.height, self.width))
         self.hard = np.zeros((self.height, self.width))
         for line in ax.lines:
             self._draw(line)
+        for patch in ax.patches:
+            if patch.get_linewidth() > 0.0:
+                self._path(patch.get_transform().transform_path(patch.get_path()).vertices)
         for text in ax.texts:
             if text.get_text() and text.get_visible():
                 self._block(text.get_window_extent())
 
-    def cells(self, display: Floats) -> Floats:
+    def cells(self, display: Any) -> Floats:
         """From pixels to cells."""
-        return (display - self.origin) / self.point
+        return np.asarray((np.asarray(display, dtype=np.float64) - self.origin) / self.point)
 
     def _draw(self, line: Line2D) -> None:
-        vertices = line.get_transform().transform_path(line.get_path()).vertices
-        p = self.cells(np.asarray(vertices, dtype=np.float64))
-        p = p[np.all(np.isfinite(p), axis=1)]
-        if p.size == 0:
-            return
-        p = np.clip(p, -50.0, np.array([self.width, self.height]) + 50.0)
+        vertices = np.asarray(line.get_transform().transform_path(line.get_path()).vertices, dtype=np.float64)
         if line.get_marker() not in ("None", "none", None, "", " "):
-            for x, y in p:
-                self._fill(self.hard, x - 3.0, y - 3.0, x + 3.0, y + 3.0)
-        if line.get_linestyle() in ("None", "none", "", " ") or len(p) < 2:
-            return
-        if line.get_drawstyle() == "steps-post":
-            p = np.repeat(p, 2, axis=0)
-            p = np.column_stack([p[1:, 0], p[:-1, 1]])
+            for x, y in self.cells(vertices):
+                _fill(self.hard, x - 3.0, y - 3.0, x + 3.0, y + 3.0)
+        if line.get_linestyle() not in ("None", "none", "", " "):
+            if line.get_drawstyle() == "steps-post" and len(vertices) > 1:
+                twice = np.repeat(vertices, 2, axis=0)
+                vertices = np.column_stack([twice[1:, 0], twice[:-1, 1]])
+            self._path(vertices)
+
+    def _path(self, vertices: Any) -> None:
+        i = self._on(self.cells(vertices))
+        self.lines[i[:, 1], i[:, 0]] = 1.0
+
+    def _on(self, p: Floats) -> NDArray[np.intp]:
+        """Cells that the straight lines through `p` touch."""
+        p = p[np.all(np.isfinite(p), axis=1)]
+        if len(p) < 2:
+            return np.zeros((0, 2), dtype=np.intp)
+        p = np.clip(p, -50.0, np.array([self.width, self.height]) + 50.0)
         length = np.maximum(np.ceil(np.abs(np.diff(p, axis=0)).max(axis=1)), 1.0).astype(np.intp)
         which = np.repeat(np.arange(length.size), length)
         share = (np.arange(which.size) - np.repeat(np.cumsum(length) - length, length)) / length[which]
-        fine = p[which] + share[:, None] * (p[which + 1] - p[which])
-        self._mark(self.lines, fine)
-
-    def _mark(self, grid: Floats, p: Floats) -> None:
-        i = np.floor(p).astype(np.intp)
-        inside = (i[:, 0] >= 0) & (i[:, 0] < self.width) & (i[:, 1] >= 0) & (i[:, 1] < self.height)
-        grid[i[inside, 1], i[inside, 0]] = 1.0
-
-    @staticmethod
-    def _fill(grid: Floats, x0: float, y0: float, x1: float, y1: float) -> None:
-        rows, columns = grid.shape
-        grid[max(int(y0), 0) : min(int(y1) + 1, rows), max(int(x0), 0) : min(int(x1) + 1, columns)] = 1.0
+        i = np.floor(p[which] + share[:, None] * (p[which + 1] - p[which])).astype(np.intp)
+        inside = (i >= 0).all(axis=1) & (i < [self.width, self.height]).all(axis=1)
+        return np.asarray(i[inside])
 
     def _block(self, box: Bbox) -> None:
-        (x0, y0), (x1, y1) = self.cells(np.array([[box.x0, box.y0], [box.x1, box.y1]]))
+        (x0, y0), (x1, y1) = self.cells([[box.x0, box.y0], [box.x1, box.y1]])
         if x1 > 0 and y1 > 0:
-            self._fill(self.hard, x0, y0, x1, y1)
+            _fill(self.hard, x0, y0, x1, y1)
 
     def place(self, wanted: Sequence[tuple[Floats, Floats, str, str]]) -> None:
         """Finds a place for every label, the most constrained (points) first."""
-        for x, y, text, color in sorted(wanted, key=lambda w: w[0].size > 1):
+        anchors = [self._anchors(x, y) for x, y, _, _ in wanted]
+        widest = max(0.45 * self.scale[0], 76.0) * 25.4 / 72.0
+        for i in sorted(range(len(wanted)), key=lambda i: wanted[i][0].size > 1):
+            _, _, text, color = wanted[i]
+            broken = "\n".join(wrapped(line, widest, SMALL) for line in tied(text).split("\n"))
             made = self.ax.annotate(
-                text, (0.5, 0.5), xytext=(0.5, 0.5), xycoords="axes fraction", textcoords="axes fraction", size=SMALL,
-                color=color, ha="left", va="bottom", path_effects=_HALO, linespacing=1.1, zorder=6, gid="label",
+                broken, (0.5, 0.5), xytext=(0.5, 0.5), xycoords="axes fraction", textcoords="axes fraction", size=SMALL,
+                color=color, ha="left", va="bottom", linespacing=1.1, zorder=6, gid="label",
             )  # fmt: skip
             made.set_in_layout(False)
-            self._place(made, self._anchors(x, y))
+            others = [a for j, a in enumerate(anchors) if j != i]
+            self._place(made, anchors[i], np.concatenate(others) if others else None)
 
     def _anchors(self, x: Floats, y: Floats) -> Floats:
-        at = self.cells(np.asarray(self.ax.transData.transform(np.column_stack([x, y])), dtype=np.float64))
+        at = self.cells(self.ax.transData.transform(np.column_stack([x, y])))
         inside = (at >= -1.0).all(axis=1) & (at <= [self.width + 1.0, self.height + 1.0]).all(axis=1)
         at = at[inside] if inside.any() else np.clip(at, 0.0, [self.width, self.height])
-        if 1 < len(at):
+        if len(at) > 1:
             way = np.concatenate([[0.0], np.cumsum(np.hypot(*np.diff(at, axis=0).T))])
             even = np.linspace(0.04, 0.96, _ANCHORS) * way[-1]
             at = np.column_stack([np.interp(even, way, at[:, k]) for k in (0, 1)])
         return at
 
-    def _place(self, made: Annotation, anchors: Floats) -> None:
+    def _place(self, made: Annotation, anchors: Floats, others: Floats | None) -> None:
         box = made.get_window_extent()
-        w, h = box.width / self.point, box.height / self.point
-        rows, columns = self.height - int(h) - 2, self.width - int(w) - 2
-        if rows < 1 or columns < 1:
-            rows, columns = max(rows, 1), max(columns, 1)
-        i, j = np.arange(rows)[:, None], np.arange(columns)[None, :]
-        lines, hard = (self._inside(g, i, j, w, h) for g in (self.lines, self.hard))
-        cost = 3.0 * lines + 1e4 * hard + 40.0 * (lines > 0)
-        dx = np.maximum(np.maximum(j[..., None] - anchors[:, 0], anchors[:, 0] - (j[..., None] + w)), 0.0)
-        dy = np.maximum(np.maximum(i[..., None] - anchors[:, 1], anchors[:, 1] - (i[..., None] + h)), 0.0)
-        # the square root of a table of all places and anchors is the slow part: squares do for the choice
-        square = np.empty((rows, columns))
-        nearest = np.empty((rows, columns), dtype=np.intp)
-        for row in range(rows):
-            d2 = dx[0] ** 2 + dy[row] ** 2
-            nearest[row] = d2.argmin(axis=1)
-            square[row] = np.take_along_axis(d2, nearest[row][:, None], axis=1)[:, 0]
-        distance = np.sqrt(square)
-        cost += distance + 6.0 * (distance > _NEAR) + 4.0 * np.maximum(2.0 - distance, 0.0)
-        best = int(np.argmin(cost))
-        row, column = divmod(best, columns)
-        self._set(made, (column + 0.5, row + 0.5), (w, h), anchors[nearest[row, column]], float(distance.flat[best]))
+        size = np.array([box.width, box.height]) / self.point
+        rows, columns = max(self.height - int(size[1]) - 2, 1), max(self.width - int(size[0]) - 2, 1)
+        lines, hard = (self._inside(g, rows, columns, size) for g in (self.lines, self.hard))
+        distance, nearest = _distance(anchors, rows, columns, size)
+        away = distance > _NEAR
+        if others is not None:
+            # what stands as near to another line as to its own needs a leader
+            other, _ = _distance(others, rows, columns, size)
+            away |= other < distance + 3.0
+        cost = 1.5 * lines + 1e4 * hard + 25.0 * (lines > 0) + distance + 8.0 * away
+        cost += 4.0 * np.maximum(2.0 - distance, 0.0)
+        best, least = 0, np.inf
+        for trial in np.argsort(cost, axis=None, kind="stable")[:_TRIALS]:
+            if cost.flat[trial] >= least:
+                break
+            corner = np.array(divmod(int(trial), columns)[::-1], dtype=np.float64) + 0.5
+            crossed = 0.0
+            if away.flat[trial]:
+                i = self._on(np.stack([anchors[nearest.flat[trial]], _end(anchors[nearest.flat[trial]], corner, size)]))
+                crossed = 30.0 * max(float(self.hard[i[:, 1], i[:, 0]].sum()) - 5.0, 0.0)  # its own marker is no hurdle
+            if cost.flat[trial] + crossed < least:
+                best, least = int(trial), float(cost.flat[trial] + crossed)
+        corner = np.array(divmod(best, columns)[::-1], dtype=np.float64) + 0.5
+        if lines.flat[best] > 0:
+            made.set_path_effects(_HALO)
+        self._set(made, corner, size, anchors[nearest.flat[best]] if away.flat[best] else None)
 
-    def _inside(self, grid: Floats, i: Any, j: Any, w: float, h: float) -> Floats:
+    def _inside(self, grid: Floats, rows: int, columns: int, size: Floats) -> Floats:
+        """What of `grid` a text of `size` would cover, by its lower left corner."""
         total = np.zeros((self.height + 1, self.width + 1))
         total[1:, 1:] = grid.cumsum(axis=0).cumsum(axis=1)
-        y0, x0 = np.maximum(i - int(_GAP), 0), np.maximum(j - int(_GAP), 0)
-        y1 = np.minimum(i + int(np.ceil(h + _GAP)), self.height)
-        x1 = np.minimum(j + int(np.ceil(w + _GAP)), self.width)
+        i, j = np.arange(rows)[:, None], np.arange(columns)[None, :]
+        y0, x0 = np.maximum(i - _GAP, 0), np.maximum(j - _GAP, 0)
+        y1 = np.minimum(i + int(np.ceil(size[1])) + _GAP, self.height)
+        x1 = np.minimum(j + int(np.ceil(size[0])) + _GAP, self.width)
         return np.asarray(total[y1, x1] - total[y0, x1] - total[y1, x0] + total[y0, x0])
 
-    def _set(
-        self, made: Annotation, at: tuple[float, float], size: tuple[float, float], anchor: Floats, distance: float
-    ) -> None:
-        share = np.array([self.width, self.height]) * self.point
-        scale = np.array([self.ax.get_window_extent().width, self.ax.get_window_extent().height])
-        x, y = np.array(at) * self.point / scale
+    def _set(self, made: Annotation, corner: Floats, size: Floats, anchor: Floats | None) -> None:
+        x, y = corner / self.scale
         made.set_position((float(x), float(y)))
-        self._fill(self.hard, at[0], at[1], at[0] + size[0], at[1] + size[1])
-        if distance <= _NEAR:
+        _fill(self.hard, *corner, *(corner + size))
+        if anchor is None:
             return
-        end = np.clip(anchor, at, np.array(at) + size)
-        ends = np.stack([anchor, end]) * self.point / scale
-        leader = Line2D(ends[:, 0], ends[:, 1], transform=self.ax.transAxes, color=GREY, lw=0.4, zorder=5, gid="leader")
+        ends = np.stack([anchor, _end(anchor, corner, size)])
+        i = self._on(ends)
+        self.hard[i[:, 1], i[:, 0]] = 1.0
+        shares = ends / self.scale
+        leader = Line2D(shares[:, 0], shares[:, 1], transform=self.ax.transAxes, color=GREY, lw=0.5, zorder=5)
+        leader.set_gid("leader")
         leader.set_in_layout(False)
         self.ax.add_artist(leader)
-        del share
+
+
+def _fill(grid: Floats, x0: float, y0: float, x1: float, y1: float) -> None:
+    rows, columns = grid.shape
+    grid[max(int(y0), 0) : min(int(y1) + 1, rows), max(int(x0), 0) : min(int(x1) + 1, columns)] = 1.0
+
+
+def _end(anchor: Floats, corner: Floats, size: Floats) -> Floats:
+    """The point of a text nearest to what it names."""
+    return np.asarray(np.clip(anchor, corner, corner + size))
+
+
+def _distance(anchors: Floats, rows: int, columns: int, size: Floats) -> tuple[Floats, NDArray[np.intp]]:
+    """From a text of `size` to the nearest anchor, and which, by the text's lower left corner."""
+    i, j = np.arange(rows)[:, None], np.arange(columns)[:, None]
+    dx = np.maximum(np.maximum(j - anchors[:, 0], anchors[:, 0] - (j + size[0])), 0.0) ** 2
+    dy = np.maximum(np.maximum(i - anchors[:, 1], anchors[:, 1] - (i + size[1])), 0.0) ** 2
+    square, nearest = np.empty((rows, columns)), np.empty((rows, columns), dtype=np.intp)
+    for row in range(rows):
+        total = dx + dy[row]
+        nearest[row] = total.argmin(axis=1)
+        square[row] = np.take_along_axis(total, nearest[row][:, None], axis=1)[:, 0]
+    return np.sqrt(square), nearest

@@ -6,9 +6,10 @@ no state shared with a program that draws figures of its own.
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
+import re
+from collections.abc import Iterator
 from contextlib import contextmanager
-from typing import Any, TypeGuard
+from typing import Any
 
 import matplotlib
 import numpy as np
@@ -22,7 +23,6 @@ from crowdsim.errors import ResultsError
 from crowdsim.guides.criterion import Criterion
 from crowdsim.results.judgement import Asked, asked
 from crowdsim.results.reader import CaseResults
-from crowdsim.results.texts import number
 
 Floats = NDArray[np.float64]
 WIDTH = 170.0  # mm, the text width of an A4 page
@@ -34,8 +34,8 @@ UNIT = "m/s\u00b2"
 
 BLACK, GREY, PALE = "#000000", "#6e6e6e", "#ababab"
 BLUE = "#1f4e79"
-STEPS = ("#f3f8fc", "#dce9f5", "#bdd5ea", "#98bddc")  # one hue, darker with every class
-BAND = "#c9c9c9"
+STEPS = ("#f3f8fc", "#dfebf6", "#c6dbee", "#a8c8e3")  # one hue, darker with every class
+BAND: dict[str, Any] = {"color": "#6a6a6a", "alpha": 0.33, "lw": 0.0}  # darker than any class, in print too
 DASHES: tuple[Any, ...] = ("-", (0, (5, 2)), (0, (1, 1.5)), (0, (6, 2, 1, 2)), (0, (3, 1.5, 1, 1.5, 1, 1.5)))
 
 _RC = {
@@ -48,6 +48,9 @@ _RC = {
     "axes.unicode_minus": True, "legend.frameon": False, "text.parse_math": False, "text.hinting": "none",
     "pdf.fonttype": 42, "svg.hashsalt": "crowdsim", "hatch.linewidth": 0.4, "path.simplify": True,
 }  # fmt: skip
+
+
+_UNITS = re.compile(r"(?<=\d) (?=%|m/s|s\b|min\b|h\b|m\b|Hz\b|kg\b|t\b|persons/)|(?<==) | (?==)")
 
 
 @contextmanager
@@ -68,10 +71,19 @@ def text_width(text: str, size: float = TEXT) -> float:
     return float(width) * 25.4 / 72.0
 
 
+def tied(text: str) -> str:
+    """`text` with numbers held to their units.
+
+    >>> tied("peak 0.95 m/s\u00b2 at 3 s").split(" ")
+    ['peak', '0.95\\xa0m/s\u00b2', 'at', '3\\xa0s']
+    """
+    return _UNITS.sub("\u00a0", text)
+
+
 def wrapped(text: str, width: float, size: float = TEXT, lines: int = 3) -> str:
-    """`text` broken between words at `width` [mm], cut with an ellipsis after `lines` lines."""
+    """`text` broken at its spaces (no-break ones hold) at `width` [mm], cut with an ellipsis after `lines` lines."""
     out: list[str] = []
-    for word in text.split():
+    for word in text.replace("\n", " ").split(" "):
         if out and text_width(f"{out[-1]} {word}", size) <= width:
             out[-1] += f" {word}"
             continue
@@ -94,7 +106,7 @@ def figure(width: float, height: float, title: str, foot: str) -> Figure:
     Panels are laid out between the two. `height` is without them.
     """
     inner = width - 4.0
-    head = wrapped(title, inner, 9.0, 2)
+    head = wrapped(tied(title), inner, 9.0, 3)
     low = wrapped(foot, inner, FOOT, 3)
     top = 4.4 * (head.count("\n") + 1) + 1.5 if head else 1.0
     bottom = 3.1 * (low.count("\n") + 1) + 2.0 if low else 1.0
@@ -163,11 +175,20 @@ def wanted(case: CaseResults, direction: str) -> Asked:
     return asked(case.attributes, direction)
 
 
+def level(value: float) -> str:
+    """A bound or limit [m/s2] as a source writes it: two decimals, more where it has more.
+
+    >>> level(0.5), level(0.125)
+    ('0.50', '0.125')
+    """
+    return f"{value:.2f}" if abs(round(value, 2) - value) < 1e-12 else f"{value:g}"
+
+
 def limit_text(wants: Asked) -> str:
     """Label of the limit."""
     if wants.limit is None:
         return ""
-    return f"{f'target {wants.target}' if wants.target else 'limit'} {number(wants.limit)}"
+    return f"{f'target {wants.target}' if wants.target else 'limit'} {level(wants.limit)}"
 
 
 def spans(criterion: Criterion, direction: str, top: float) -> list[tuple[str, float, float, str]]:
@@ -182,8 +203,3 @@ def spans(criterion: Criterion, direction: str, top: float) -> list[tuple[str, f
         for name, low, high, colour in zip(criterion.classes, edges[:-1], edges[1:], steps, strict=True)
         if low < top
     ]
-
-
-def is_whole(values: Sequence[float]) -> TypeGuard[Sequence[int]]:
-    """Whether all values are whole numbers."""
-    return all(float(v).is_integer() for v in values)

@@ -133,6 +133,7 @@ def maximise(x: Floats, family: Family) -> tuple[Floats, NDArray[np.bool_]]:
     """
     free = 2 if family == "gumbel" else 3
     parameters = l_moment_estimate(x, family)
+    reached = log_likelihood(x, parameters)
     found = np.zeros(x.shape[0], dtype=bool)
     active = np.arange(x.shape[0])
     for _ in range(ITERATIONS):
@@ -146,24 +147,25 @@ def maximise(x: Floats, family: Family) -> tuple[Floats, NDArray[np.bool_]]:
         step[:, :free] = np.einsum("sij,sj->si", axes, along)
         done = (np.sum(gradient * step[:, :free], axis=1) < CONVERGED) & (curvature[:, 0] > 0.0)
         found[active[done]] = True
-        step, moved = _shortened(some, here, step)
-        parameters[active] = here + step
+        parameters[active], reached[active], moved = _ascended(some, here, step, reached[active])
         active = active[~done & moved]
         if active.size == 0:
             break
     return parameters, found
 
 
-def _shortened(x: Floats, parameters: Floats, step: Floats) -> tuple[Floats, NDArray[np.bool_]]:
-    """Steps halved until the likelihood does not fall, and which of them are left."""
-    least = log_likelihood(x, parameters) - 1e-12 * x.shape[1]  # rounding
-    falls = log_likelihood(x, parameters + step) < least
+def _ascended(x: Floats, parameters: Floats, step: Floats, reached: Floats) -> tuple[Floats, Floats, NDArray[np.bool_]]:
+    """Parameters after steps halved until the likelihood `reached` does not fall, the new one, and which moved."""
+    least = reached - 1e-12 * x.shape[1]  # rounding
+    after = log_likelihood(x, parameters + step)
+    falls = after < least
     for _ in range(HALVINGS):
         if not falls.any():
             break
         step = np.where(falls[:, None], 0.5 * step, step)
-        falls[falls] = log_likelihood(x[falls], (parameters + step)[falls]) < least[falls]
-    return np.where(falls[:, None], 0.0, step), ~falls
+        after[falls] = log_likelihood(x[falls], (parameters + step)[falls])
+        falls = after < least
+    return np.where(falls[:, None], parameters, parameters + step), np.where(falls, reached, after), ~falls
 
 
 def covariance_of(x: Floats, parameters: Floats, family: Family, label: NDArray[np.intp]) -> Floats:

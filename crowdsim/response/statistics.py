@@ -17,6 +17,18 @@ def percentile_rank(count: int, share: float) -> int:
     return max(1, math.ceil(share * count - 1e-9))
 
 
+def least_for_interval(share: float, confidence: float = 0.95) -> int:
+    """Least number of independent values with an equal-tailed interval of a percentile.
+
+    The largest value must exceed a high percentile, the smallest stay below a low one, each but for
+    (1 - confidence)/2 of the time.
+
+    >>> least_for_interval(0.95), least_for_interval(0.5)
+    (72, 6)
+    """
+    return math.ceil(math.log(0.5 * (1.0 - confidence)) / math.log(max(share, 1.0 - share)) - 1e-9)
+
+
 def interval_ranks(count: int, share: float, confidence: float = 0.95) -> tuple[int, int] | None:
     """Ranks (r, s) of the distribution-free, equal-tailed interval [x_(r), x_(s)] of a percentile.
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 from typing import Literal
 
-from crowdsim.response.statistics import LEAST_FOR_INTERVAL, Percentile
+from crowdsim.response.statistics import Percentile, least_for_interval
 from crowdsim.response.windows import Proportion, normal_quantile
 
 Verdict = Literal["met", "not met", "undecided"]
@@ -36,7 +36,7 @@ def realisations_to_decide(
     if apart <= 0.0:
         return None
     need = (z * z * share * (1.0 - share) / apart**2 + 1.0 / apart) / each  # a rank may be off by one
-    count = max(LEAST_FOR_INTERVAL, math.ceil(need), math.ceil(1.05 * realisations))
+    count = max(least_for_interval(share, confidence), math.ceil(need), math.ceil(1.05 * realisations))
     count = _round_up(count)
     return count if count <= OUT_OF_REACH else None
 
@@ -53,7 +53,7 @@ def realisations_for_width(value: Percentile, realisations: int, wanted: float) 
     half = relative_half_width(value)
     if half is None:
         return None
-    return max(LEAST_FOR_INTERVAL, _round_up(math.ceil(realisations * (half / wanted) ** 2)))
+    return max(least_for_interval(value.share), _round_up(math.ceil(realisations * (half / wanted) ** 2)))
 
 
 def _round_up(count: int) -> int:

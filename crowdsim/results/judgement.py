@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 
 from crowdsim.guides.catalogue import CRITERIA
 from crowdsim.guides.criterion import Criterion
-from crowdsim.response.statistics import LEAST_FOR_INTERVAL, Percentile
+from crowdsim.response.statistics import Percentile, least_for_interval
 from crowdsim.response.verdict import (
     Verdict,
     realisations_for_width,
@@ -23,6 +23,7 @@ from crowdsim.results.texts import number, percent, span
 
 Floats = NDArray[np.float64]
 FEW = 20  # windows below which a 95 % value is the largest of all
+CLASS_SHARE = 0.95  # the percentile of the peak whose class is the case's
 LOADED = ("vertical",)  # directions in which forces act in this version; others are not judged
 
 
@@ -120,7 +121,7 @@ def judge(
     count = peaks.shape[0]
     exceedance = None if wants.limit is None else window_exceedance(peaks, wants.limit)
     says, needed = _verdict(value, wants.limit, exceedance, count, short)
-    name = wants.criterion.classify(value.value, direction)
+    name = wants.criterion.classify(value.value, direction) if value.share == CLASS_SHARE else None
     notes = _notes(wants, direction, short, duration, window, exceedance, value, says, needed, count)
     common: dict[str, Any] = {
         "case": str(attributes["name"]), "direction": direction, "realisations": count, "windows": peaks.shape[1],
@@ -183,8 +184,11 @@ def _notes(
         notes.append(f"{wants.criterion.title} has nothing to say of the {direction} direction")
     elif direction in wants.criterion.notes:
         notes.append(f"{wants.criterion.title}: {wants.criterion.notes[direction]}")
-    if count < LEAST_FOR_INTERVAL:
-        notes.append(f"no interval of the 95 % value, hence no verdict, below {LEAST_FOR_INTERVAL} realisations")
+    least = least_for_interval(value.share)
+    if count < least:
+        notes.append(f"no interval of the {100 * value.share:g} % value, hence no verdict, below {least} realisations")
+    if value.share != CLASS_SHARE and direction in wants.criterion.bounds and wants.criterion.classes:
+        notes.append(f"a class goes with the {100 * CLASS_SHARE:g} % value")
     if says == "undecided" and not short and exceedance is not None:
         above, near = percent(exceedance.value), percent(1.0 - value.share)
         notes.append(
@@ -228,7 +232,7 @@ def buys(judgement: Judgement) -> str:
     """What more realisations would buy, as a sentence."""
     half = relative_half_width(judgement.value)
     if half is None:
-        return f"{LEAST_FOR_INTERVAL} realisations give a first interval."
+        return f"{least_for_interval(judgement.value.share)} realisations give a first interval."
     share = f"{100 * judgement.value.share:g} %"
     text = f"{judgement.realisations:,} realisations give +-{100 * half:.2g} % on the {share} value"
     if half <= 0.03 or judgement.wanted is None:

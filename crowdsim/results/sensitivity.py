@@ -106,9 +106,9 @@ class Sensitivity:
             f"{', '.join(f'{s} ({span_of_change(reached[s])})' for s in heavy)}."
         )
         if light:
-            text += f" Less than on chance: {', '.join(f'{s} ({span_of_change(reached[s])})' for s in light)}."
+            text += f" Less than by chance: {', '.join(f'{s} ({span_of_change(reached[s])})' for s in light)}."
         if band is not None:
-            text += f" More realisations could remove {span_of_change(band)} and no more."
+            text += f" Chance leaves {span_of_change(band)}, all that more realisations could remove."
         return text
 
     def not_varied_text(self) -> str:

@@ -3,14 +3,17 @@
 from __future__ import annotations
 
 import math
-from dataclasses import asdict, dataclass
+from dataclasses import asdict, dataclass, replace
 from pathlib import Path
 from typing import Any
 
+from crowdsim.response.extreme_likelihood import Family
+from crowdsim.results.fits import FittedCase, fit_file
 from crowdsim.results.reader import open_file
+from crowdsim.results.sensitivity import Sensitivity, read_sensitivity
 from crowdsim.results.summary import CaseSummary, Summary, summarise
 from crowdsim.scenario.reader import Scenario, parse_scenario
-from crowdsim.study.estimate import PEAK, RMS, Estimates, Method, estimate
+from crowdsim.study.estimate import CROSSING, NARROW_PEAK, PEAK, RMS, SQUARE_ROOT, STEADY, Estimates, Method, estimate
 
 _TWO_SIDED = 1.959964  # standard errors of a mean, 95 %
 
@@ -34,11 +37,16 @@ class Compared:
 
 @dataclass(frozen=True)
 class Comparison:
-    """A run in numbers, and the formulas beside it, case by case."""
+    """A run in numbers, and the formulas beside it, case by case.
+
+    fits : laws of the window peaks, where asked for; sensitivities : studies that the file holds
+    """
 
     summary: Summary
     estimates: Estimates
     rows: tuple[Compared, ...]
+    fits: tuple[FittedCase, ...] = ()
+    sensitivities: tuple[Sensitivity, ...] = ()
 
     def of(self, case: str) -> tuple[Compared, ...]:
         """Those of one case."""
@@ -67,11 +75,30 @@ class Comparison:
                 {**asdict(r.method), **{k: v for k, v in asdict(r).items() if k != "method"}} for r in self.rows
             ],
             "screening": [asdict(s) for s in self.estimates.screening],
+            "fits": [asdict(f) for f in self.fits],
+            "sensitivities": [s.as_dict() for s in self.sensitivities],
         }
 
 
 def _crossing(method: Method) -> float:
-    return method.value if method.value is not None and method.name.endswith("force moving") else -1.0
+    return method.value if method.value is not None and method.name == CROSSING else -1.0
+
+
+MARKED = {
+    STEADY: "steady state",
+    CROSSING: "one crossing",
+    SQUARE_ROOT: "crossing x sqrt(number)",
+    NARROW_PEAK: "random stream",
+}
+
+
+def marks(comparison: Comparison, case: str) -> list[tuple[str, float]]:
+    """Formulas worth a mark on a figure of the peak, [m/s2]."""
+    return [
+        (MARKED[r.method.name], r.method.value)
+        for r in comparison.leading(case)
+        if r.method.name in MARKED and r.method.value is not None
+    ]
 
 
 def compare(summary: Summary, scenario: Scenario) -> Comparison:
@@ -82,16 +109,21 @@ def compare(summary: Summary, scenario: Scenario) -> Comparison:
     return Comparison(summary, estimates, tuple(rows))
 
 
-def compare_file(path: str | Path, *, percentile: float = 0.95, limit: float | None = None) -> Comparison:
+def compare_file(
+    path: str | Path, *, percentile: float = 0.95, limit: float | None = None, family: Family | None = None
+) -> Comparison:
     """The same for a results file, whose scenario it holds.
 
     percentile, limit : in place of 95 % and of what the cases ask
+    family : law to fit to the window peaks, none by default
 
     Raises ResultsError for a file that is none of ours, InputError where its scenario cannot be read any more.
     """
     with open_file(path) as file:
         scenario = parse_scenario(str(file.attrs["scenario"]), f"scenario within {path}")
-    return compare(summarise(path, scenario.title, percentile=percentile, limit=limit), scenario)
+    comparison = compare(summarise(path, scenario.title, percentile=percentile, limit=limit), scenario)
+    fits = () if family is None else fit_file(path, family)
+    return replace(comparison, fits=fits, sensitivities=read_sensitivity(path))
 
 
 def _compared(method: Method, case: CaseSummary) -> Compared:

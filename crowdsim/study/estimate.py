@@ -201,6 +201,10 @@ def _weights(now: Situation, one: Resonance) -> Iterator[Method]:
         assumes=f"uniform simple span: W = 2 M g/phi^2 = {number(total / 1e3)} kN, of which the mode has half",
         why="as the steady state",
     )  # fmt: skip
+    if one.persons < 1.0:
+        note = f"{number(one.persons)} persons on the deck on average: the form is for a group"
+        yield _method(now, mode, WEIGHTS.format("1.27"), _weight_source("1.27"), None, **who, note=note)
+        return
     crowd = by(resonance.SPREAD_OVER_SIMPLE_SPAN, one.persons * one.weight, total)
     yield _method(
         now, mode, WEIGHTS.format("1.27"), _weight_source("1.27"), crowd, **who,
@@ -263,7 +267,8 @@ def _stream(now: Situation, mode: Mode) -> Iterator[Method]:
     yield _method(
         now, mode, NARROW_SD, source, sd, measure=RMS,
         stands_for=f"rms over time of mode {mode.name} alone at its antinode, all streams together", assumes=assumes,
-        why="other modes, and what the band leaves out: the force of a walker grows and fades, paces are not flat",
+        why="other modes; the force of a walker grows and fades; and where few paces lie on the mode's frequency, the "
+        "many beside it count for more than the band holds",
     )  # fmt: skip
     yield _method(
         now, mode, NARROW_PEAK, peak_source, factor * sd,

@@ -127,15 +127,13 @@ def _without(variation: Variation, why: str) -> Varied:
 
 def _outside(case: Case, base: Case) -> list[str]:
     """Streams whose pace leaves the range of the load set more often than in the base."""
-    found = []
+    found: dict[str, list[str]] = {}
     for now, before in zip(case.streams, base.streams, strict=True):
         if now.outside > max(OUTSIDE_SHARE, 1.1 * before.outside):
             low, high = now.load.pace_range
-            found.append(
-                f"{100 * now.outside:.2g} % of the paces of {now.walkers.name} outside {low:g} to {high:g} Hz, where "
-                "the load set holds"
-            )
-    return found
+            said = f"{100 * now.outside:.2g} % outside {low:g} to {high:g} Hz, where {now.load.name} holds"
+            found.setdefault(said, []).append(now.walkers.name)
+    return [f"paces of {', '.join(names)}: {said}" for said, names in found.items()]
 
 
 def observed_like(case: Case, base: Case) -> Case:

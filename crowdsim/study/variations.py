@@ -68,7 +68,7 @@ def changed(scenario: Scenario, table: CaseTable, **tables: Any) -> Scenario:
     """
     file = scenario.file.model_copy(update={"case": [table], **tables})
     try:
-        file = ScenarioFile.model_validate(file.model_dump(exclude_none=True))
+        file = ScenarioFile.model_validate(file.model_dump(exclude_none=True, warnings=False))
     except ValidationError as error:
         texts = [f"{key_text(e['loc'])}: {e['msg'].replace('Input should', 'should')}" for e in error.errors()]
         raise UnbuildableError("; ".join(dict.fromkeys(texts))) from None
@@ -251,7 +251,7 @@ class _Maker:
 
         for factor in STRIDES:
             yield self._make(
-                subject, f"mean {subject} {_signed(factor)}", OWN_CHOICE, "people stay longer or shorter on the deck",
+                subject, f"mean {subject} {_signed(factor)}", OWN_CHOICE, "at the same pace: people are longer or shorter on the deck",
                 stream=self._with({s.name: stride(s, factor) for s in self.streams}),
             )  # fmt: skip
 

@@ -15,7 +15,7 @@ from scipy import special, stats
 from crowdsim.response.extremes import ExtremeFit, Floats, fit, goodness
 
 LOCATION, SCALE = 0.5, 0.1
-TRIALS = 1000
+TRIALS = 500
 LAWS = [("gumbel", 0.0, 200, 1), ("gev", -0.1, 300, 1), ("gumbel", 0.0, 150, 2), ("gev", -0.1, 200, 2)]
 IDS = ["gumbel", "gev", "gumbel-pairs", "gev-pairs"]
 
@@ -58,15 +58,15 @@ def test_parameters_are_found_again(family: str, shape: float, realisations: int
 def test_standard_errors_are_those_of_the_trials(family: str, shape: float, realisations: int, windows: int) -> None:
     """Median of the stated errors against the spread of the estimates over trials.
 
-    The spread of 1000 trials is known to 2.2 %: 4 of them are 9 % (false alarm 6e-5 each); the stated errors are of
-    first order, good to a few in n: 5 % more at 150 to 300 realisations. Windows taken for independent would miss by a
+    The spread of 500 trials is known to 3.2 %: 4 of them are 13 % (false alarm 6e-5 each); the stated errors are of
+    first order, good to a few in n: 3 % more at 150 to 300 realisations. Windows taken for independent would miss by a
     factor 1/sqrt(1.8) = 0.75.
     """
     found = fits(family, shape, realisations, windows)
     stated = np.sqrt(np.median([np.diag(f.covariance) for f in found], axis=0))
     names = ("location", "scale", "shape")[: stated.size]
     spread = np.array([np.std([getattr(f, n) for f in found]) for n in names])
-    assert stated / spread == pytest.approx(1.0, abs=0.14)
+    assert stated / spread == pytest.approx(1.0, abs=0.16)
 
 
 def band(low: float, high: float) -> tuple[float, float]:
@@ -101,22 +101,22 @@ def test_coverage_of_the_exceedance(family: str, shape: float, realisations: int
 
 
 def test_windows_taken_for_independent_mislead() -> None:
-    """The same pairs as single values: the interval is too short by sqrt(1 + correlation) and covers less than 0.92."""
+    """The same pairs as single values: the interval is too short by up to sqrt(1.8), and covers 0.86 (computed)."""
     random = np.random.default_rng([150, 2])
     true = truth(0.0).quantile(0.95)
     hits = []
-    for _ in range(TRIALS):
+    for _ in range(300):
         low, high = fit(draw(random, 0.0, 150, 2).ravel()).quantile_interval(0.95)
         hits.append(low <= true <= high)
-    assert np.mean(hits) < 0.92
+    assert np.mean(hits) < 0.91  # 300 trials: two and a half standard errors above
 
 
 @pytest.mark.parametrize(("family", "shape", "windows"), [("gumbel", 0.0, 1), ("gev", -0.1, 1), ("gumbel", 0.0, 3)])
 def test_p_value_under_the_model(family, shape: float, windows: int) -> None:  # type: ignore[no-untyped-def]
-    """Uniform: Kolmogorov-Smirnov test of 200 p-values (false alarm 1e-3; steps of 1/100 are within its 0.137)."""
+    """Uniform: Kolmogorov-Smirnov test of 120 p-values (false alarm 1e-3; steps of 1/100 are small beside 0.178)."""
     random = np.random.default_rng(7)
     p = []
-    for seed in range(200):
+    for seed in range(120):
         values = draw(random, shape, 60, windows)
         p.append(goodness(fit(values, family), values, samples=99, seed=seed).p_value)
     assert stats.kstest(p, "uniform").pvalue > 1e-3
