@@ -731,92 +731,103 @@ def point_block(y, keep, begin, end, first, final, window, segment, sums, lanes,
 
 
 @_compiled()
-def envelope_block(motion, shapes, envelope, begin, end, first, y, tops):
-    """Largest |acceleration| at every station over steps begin..end of a block.
+def deck_block(motion, shapes, envelope, ends, most, peaks, begin, end, first, segment, y, tops):
+    """Largest |acceleration| at every station, and anywhere in each comfort window, over steps begin..end.
 
-    shapes: [station, mode]. A part of 128 steps, and before it eight parts together, is left out
-    at a station where the sum over the modes of |ordinate| x (largest |motion| + 1/8 of its
-    largest jump), which no sample and no vertex of a parabola can exceed, is not above what
-    stands: exact. tops: [PARTS + 1, mode] scratch.
+    shapes: [station, mode], a direction after the other; envelope: [station]; ends: [direction] one
+    past its last station; most: [direction, mode] largest |ordinate|; peaks: [direction, window], the
+    rest of the record last. Parts of 128 steps, and before them eight parts together, are left out
+    where the sum over the modes of |ordinate| x (largest |motion| + 1/8 of its largest jump), which no
+    sample and no vertex of a parabola can exceed, is not above what stands: exact. A vertex belongs
+    to the window of its middle step, as at a point. tops: [PARTS + 1, mode] scratch.
     """
-    stations = envelope.size
-    modes = shapes.shape[1]
+    last = peaks.shape[1] - 1
     outer = begin
     while outer < end:
         limit = min((outer // (PARTS * ENVELOPE_PART) + 1) * PARTS * ENVELOPE_PART, end)
-        for m in range(modes):
-            tops[PARTS, m] = 0.0
+        k = min((outer - first) // segment, last)
+        if k < last:
+            limit = min(limit, first + (k + 1) * segment)
+        if outer > first and outer == first + k * segment:
+            _close_window(motion, shapes, ends, peaks, outer, first, k - 1)
+        _tops(motion, tops, outer, limit, first)
+        for s in range(envelope.size):
+            if _bound(shapes[s], tops[PARTS]) > envelope[s]:
+                part = outer
+                number = 0
+                while part < limit:
+                    stop = min((part // ENVELOPE_PART + 1) * ENVELOPE_PART, limit)
+                    if _bound(shapes[s], tops[number]) > envelope[s]:
+                        early = 1 if part > first else 0
+                        envelope[s] = _station(y, shapes[s], motion, part, stop, early, first, envelope[s])
+                    part = stop
+                    number += 1
+        begins = np.int64(0)
+        for d in range(ends.size):
+            if k == 0:  # all so far is the first window's
+                for s in range(begins, ends[d]):
+                    peaks[d, k] = max(peaks[d, k], envelope[s])
+            elif _bound(most[d], tops[PARTS]) > peaks[d, k]:
+                _window(motion, shapes, most[d], begins, ends[d], peaks[d], k, outer, limit, first, segment, y, tops)
+            begins = ends[d]
+        outer = limit
+
+
+@_compiled(inline="always")
+def _bound(shape, top):
+    """What no sample and no vertex can exceed."""
+    bound = 0.0
+    for m in range(shape.size):
+        bound += abs(shape[m]) * top[m]
+    return bound
+
+
+@_compiled()
+def _tops(motion, tops, outer, limit, first):
+    """Largest |motion| + 1/8 of its largest jump, by part, and over all parts last."""
+    for m in range(motion.shape[0]):
+        x = motion[m]
+        whole = 0.0
         part = outer
         number = 0
         while part < limit:
             stop = min((part // ENVELOPE_PART + 1) * ENVELOPE_PART, limit)
             early = 1 if part > first else 0
-            for m in range(modes):
-                x = motion[m]
-                a, jump = _largest(x, CARRY + part - early, stop - part + early)
-                a += 0.125 * jump
-                tops[number, m] = a
-                tops[PARTS, m] = max(a, tops[PARTS, m])
+            a, jump = _largest(x, CARRY + part - early, stop - part + early)
+            a += 0.125 * jump
+            tops[number, m] = a
+            whole = max(whole, a)
             part = stop
             number += 1
-        for s in range(stations):
-            bound = 0.0
-            for m in range(modes):
-                bound += abs(shapes[s, m]) * tops[PARTS, m]
-            if bound <= envelope[s]:
-                continue
-            shape = shapes[s]
-            part = outer
-            number = 0
-            while part < limit:
-                stop = min((part // ENVELOPE_PART + 1) * ENVELOPE_PART, limit)
-                bound = 0.0
-                for m in range(modes):
-                    bound += abs(shape[m]) * tops[number, m]
-                if bound > envelope[s]:
-                    early = 1 if part > first else 0
-                    envelope[s] = _station(y, shape, motion, part, stop, early, first, envelope[s])
-                part = stop
-                number += 1
-        outer = limit
+        tops[PARTS, m] = whole
 
 
 @_compiled()
-def deck_block(motion, shapes, ends, peaks, begin, end, first, segment, y, tops):
-    """Largest |acceleration| anywhere on the deck in each comfort window, over steps begin..end.
-
-    ends: [direction] one past its last station; peaks: [direction, window], the rest of the record
-    last. Skips like `envelope_block`; a vertex belongs to the window of its middle step, as at a point.
-    tops: [PARTS + 1, mode] scratch.
-    """
-    modes = shapes.shape[1]
-    last = peaks.shape[1] - 1
-    part = begin
-    while part < end:
-        k = min((part - first) // segment, last)
-        stop = min((part // ENVELOPE_PART + 1) * ENVELOPE_PART, end)
-        if k < last:
-            stop = min(stop, first + (k + 1) * segment)
-        border = part > first and part == first + k * segment
-        if border:
-            _close_window(motion, shapes, ends, peaks, part, first, k - 1)
-        early = 1 if part > first and not border else 0
-        least = part - 1 if border else first
-        for m in range(modes):
-            a, jump = _largest(motion[m], CARRY + part - early, stop - part + early)
-            tops[0, m] = a + 0.125 * jump
-        station = 0
-        for d in range(ends.size):
-            top = peaks[d, k]
-            while station < ends[d]:
-                bound = 0.0
-                for m in range(modes):
-                    bound += abs(shapes[station, m]) * tops[0, m]
-                if bound > top:
-                    top = _station(y, shapes[station], motion, part, stop, early, least, top)
-                station += 1
-            peaks[d, k] = top
+def _window(motion, shapes, most, begins, ends, peaks, k, outer, limit, first, segment, y, tops):
+    """Brings peaks[k] up to the largest |acceleration| at stations begins..ends over steps outer..limit."""
+    part = outer
+    number = 0
+    while part < limit:
+        stop = min((part // ENVELOPE_PART + 1) * ENVELOPE_PART, limit)
+        if _bound(most, tops[number]) > peaks[k]:
+            border = part > first and part == first + k * segment  # the step before is another window's
+            early = 1 if part > first and not border else 0
+            least = part - 1 if border else first
+            # the station that can have most comes first: after it few can beat what stands
+            high = -1.0
+            likely = begins
+            for s in range(begins, ends):
+                bound = _bound(shapes[s], tops[number])
+                if bound > high:
+                    high = bound
+                    likely = s
+            if high > peaks[k]:
+                peaks[k] = _station(y, shapes[likely], motion, part, stop, early, least, peaks[k])
+                for s in range(begins, ends):
+                    if _bound(shapes[s], tops[number]) > peaks[k]:
+                        peaks[k] = _station(y, shapes[s], motion, part, stop, early, least, peaks[k])
         part = stop
+        number += 1
 
 
 @_compiled()
@@ -862,7 +873,7 @@ def realisation(
     persons, numbers, loads, many, ordinates, twist, modes, step, points, stations,
     first_sample, last_sample, total, warm, window, segment, block, weights, history, history_start,
     force, table, work, rows, between, motion, state, y, scratch, tops,
-    peaks, squares, running, best, envelope, ends, deck_peaks, stop, progress,
+    peaks, squares, running, best, envelope, ends, most, deck_peaks, stop, progress,
 ):  # fmt: skip
     """Samples first..last of one realisation in blocks: force, motion, measures.
 
@@ -904,8 +915,9 @@ def realisation(
                     running[q], peaks[q], best[q]
                 )  # fmt: skip
         if begin < end:
-            envelope_block(motion, stations, envelope, begin, end, warm - zero, scratch[64:], tops)
-            deck_block(motion, stations, ends, deck_peaks, begin, end, warm - zero, segment, scratch[64:], tops)
+            deck_block(
+                motion, stations, envelope, ends, most, deck_peaks, begin, end, warm - zero, segment, scratch[64:], tops
+            )  # fmt: skip
         for m in range(modes):
             if not math.isfinite(state[m, 0]):
                 return NOT_FINITE

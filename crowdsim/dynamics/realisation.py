@@ -281,6 +281,8 @@ class Realisation:
         self._running, self._best = np.zeros((points, 2)), np.zeros((points, 3))
         self._envelope = np.zeros(recorder.stations.shape[0])
         self._ends = np.cumsum(np.array(directions, dtype=np.int64))
+        parts = np.split(np.abs(self._stations), self._ends[:-1])
+        self._most = np.array([part.max(axis=0) for part in parts])
         self._deck = np.zeros((len(directions), recorder.segments + 1))
 
     def advance(self, passages: Passages, until: int) -> bool:
@@ -304,7 +306,7 @@ class Realisation:
             self._force, self._zeros("table", _slots(rows, self.sample, until, self.block) * SLOT), self._work,
             self._rows, self._between, self._motion, self._state, self._y, self._scratch, self._tops,
             self._peaks, self._squares, self._running, self._best, self._envelope,
-            self._ends, self._deck, self.control.stop, self.control.progress,
+            self._ends, self._most, self._deck, self.control.stop, self.control.progress,
         )  # fmt: skip
         if status == kernels.NOT_FINITE:
             raise NotFiniteError("the motion is not finite")

@@ -2,23 +2,21 @@
 
 from __future__ import annotations
 
-import os
 import tomllib
 import warnings
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from pathlib import Path
-from typing import Any
 
 from matplotlib.axes import Axes
 
 from crowdsim.errors import ResultsError
 from crowdsim.plots.envelope import envelope
 from crowdsim.plots.exceedance import FAMILIES, exceedance
-from crowdsim.plots.style import WIDTH, home, styled
+from crowdsim.plots.save import check_place, save
+from crowdsim.plots.style import WIDTH, styled
 from crowdsim.results.reader import CaseResults, Results, open_results
 
-ENDINGS = ("png", "svg", "pdf")
 NARROWEST, WIDEST = 60.0, 400.0  # mm
 
 
@@ -110,7 +108,7 @@ def draw(
     with styled(), warnings.catch_warnings():
         # a title in a script that the typeface lacks: its letters become boxes, and that is seen
         warnings.filterwarnings("ignore", message=r"Glyph .* missing")
-        _save(FIGURES[what](wish), place, wish.foot)
+        save(FIGURES[what](wish), place, wish.foot)
     return place
 
 
@@ -119,12 +117,7 @@ def _check(
 ) -> None:
     if what not in FIGURES:
         raise ResultsError(f"no figure is called {what!r}; known: {', '.join(FIGURES)}")
-    if place.suffix.lower().removeprefix(".") not in ENDINGS:
-        raise ResultsError(f"{place}: a figure ends in .png, .svg or .pdf")
-    if place.is_dir():
-        raise ResultsError(f"{place}: is a folder; --out takes the name of a file")
-    if not place.parent.is_dir():
-        raise ResultsError(f"{place}: there is no folder {place.parent}; make it first")
+    check_place(place)
     if not NARROWEST <= width <= WIDEST:
         raise ResultsError(f"width {width:g} mm: {NARROWEST:g} to {WIDEST:g} mm are possible")
     if point is not None and what != "history":
@@ -152,22 +145,3 @@ def _foot(results: Results, case: CaseResults) -> str:
     count = case.realisations
     of = f"{count:,} realisation{'s' if count != 1 else ''}"
     return f"{title} \u00b7 case {case.name} \u00b7 seed {results.seed} \u00b7 {of} \u00b7 crowdsim {results.version}"
-
-
-def _save(ax: Axes, place: Path, title: str) -> None:
-    ending = place.suffix.lower().removeprefix(".")
-    # no date: equal inputs give equal bits
-    named: dict[str, dict[str, Any]] = {
-        "png": {"Title": title, "Software": "crowdsim"},
-        "svg": {"Title": title, "Creator": "crowdsim", "Date": None},
-        "pdf": {"Title": title, "Creator": "crowdsim", "Producer": None, "CreationDate": None},
-    }
-    temporary = place.with_name(f".{place.name}.{os.getpid()}.part")
-    try:
-        home(ax).savefig(temporary, format=ending, metadata=named[ending])
-        os.replace(temporary, place)
-    except OSError as error:
-        where = place.parent.resolve()
-        raise ResultsError(f"{place}: cannot be written in {where} ({error.strerror or 'not possible'})") from None
-    finally:
-        temporary.unlink(missing_ok=True)

@@ -130,12 +130,14 @@ def _lines(ax: Axes, labels: Labels, s: Floats, ordered: Floats, named: bool) ->
             high_up = high > 0.6 * high.max()
             labels.line(s[high_up], high[high_up], "interval of the 95 % value")
     median = np.median(ordered, axis=0)
-    for y, dash, name, weight in (
+    alike = percentile_rank(count, SHARE) == count
+    lines = [
         (ordered[-1], DASHES[2], "largest", 1.0),
-        (value, DASHES[0], "95 % value", 1.4),
+        (value, DASHES[0], "95 % value, the largest" if alike else "95 % value", 1.4),
         (median, DASHES[1], "median", 1.0),
-    ):
-        ax.plot(s, y, color=BLACK, ls=dash, lw=weight, gid=name)
+    ]
+    for y, dash, name, weight in lines[1:] if alike else lines:
+        ax.plot(s, y, color=BLACK, ls=dash, lw=weight, gid=name.split(",")[0])
         if named:
             # where the lines are apart, not where they meet at the ends
             labels.line(s[y > 0.6 * y.max()], y[y > 0.6 * y.max()], name)

@@ -20,6 +20,7 @@ from crowdsim.plots.style import (
     BLUE,
     DASHES,
     GREY,
+    NARROW,
     UNIT,
     WIDTH,
     direction_of,
@@ -41,6 +42,7 @@ Family = Literal["gumbel", "gev"]
 FAMILIES: dict[str, Family] = {"gumbel": "gumbel", "gev": "gev"}
 NAMES = {"gumbel": "Gumbel law", "gev": "GEV law"}
 SHARE = 0.95
+POOR = 0.05  # of the goodness of fit
 LEVELS = 160  # of the band
 
 
@@ -82,7 +84,7 @@ def exceedance(
     own = ax is None
     if ax is None:
         title = f"Peak {direction} acceleration anywhere on the deck in {time}"
-        fig = figure(width, (92.0 if width >= 120.0 else 84.0) + 3.7 * min(len(marks), 6), title, foot)
+        fig = figure(width, 90.0 if width >= NARROW else 82.0, title, foot)
         ax = fig.subplots()
     top = _limits(ax, case, direction, peaks, law, marks)
     labels = Labels(ax)
@@ -116,7 +118,8 @@ def _fitted(peaks: Floats, family: Family | None) -> ExtremeFit | None:
 
 def _name(family: Family, law: ExtremeFit, peaks: Floats) -> str:
     try:
-        return f"{NAMES[family]} (goodness of fit p = {goodness(law, peaks).p_value:.2g})"
+        p = goodness(law, peaks).p_value
+        return f"{NAMES[family]} ({'poor fit' if p < POOR else 'goodness of fit'}, p = {p:.2g})"
     except ValueError:
         return NAMES[family]
 
@@ -160,7 +163,9 @@ def _sample(ax: Axes, labels: Labels, peaks: Floats, top: float) -> None:
     # ends at the largest peak, above which the share is 0: beyond a logarithmic axis
     ax.plot(np.append(x, ordered[-1]), np.append(y, y[-1]), drawstyle="steps-post", color=BLACK, lw=1.1, gid="share")
     ax.plot([ordered[-1]], [y[-1]], "|", ms=5, color=BLACK, gid="largest")
-    labels.line(np.append(x, ordered[-1])[1:], np.append(y, y[-1])[1:], f"simulated, {_count(peaks)}")
+    labels.line(
+        np.append(x, ordered[-1])[1:], np.append(y, y[-1])[1:], f"simulated, {_count(peaks)}, with 95 % interval"
+    )
 
 
 def _count(peaks: Floats) -> str:

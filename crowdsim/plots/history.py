@@ -91,13 +91,13 @@ def history(
     main, deck, close = _panels(fig, persons is not None)
     labels = [_main(main, case, place, time, a, dt, peak, at, width), _close(close, time, a, peak, at, width)]
     main.axvspan(at - 0.5 * ABOUT, at + 0.5 * ABOUT, color=STEPS[1], lw=0, zorder=0)
-    observed = f" (observed time begins at {number(time[0])} s)" if time[0] > 0.0 else ""
+    span = f" ({_kept(case, time, dt)})" if width >= NARROW and time[0] > 0.0 else ""
     if deck is not None and persons is not None:
         _deck(deck, persons, (float(time[0]), float(time[-1])), width)
         main.tick_params(labelbottom=False)
         main.set_xlabel("")
     low = deck or main
-    low.set_xlabel("time, s" + (observed if width >= NARROW else ""))
+    low.set_xlabel("time, s" + span)
     fig.align_ylabels()
     settle(labels)
     return main
@@ -118,6 +118,14 @@ def chosen(case: CaseResults, realisation: int | None, point: str | None) -> tup
     if point not in case.points.name:
         raise ResultsError(f"no point is called {point!r}; points of case {case.name!r}: {', '.join(case.points.name)}")
     return realisation, case.points.name.index(point)
+
+
+def _kept(case: CaseResults, time: Floats, dt: float) -> str:
+    """What the time axis begins with: the observed time, or what a long record keeps."""
+    warm_up = float(case.attributes["warm_up"])
+    if time[0] > warm_up + dt:
+        return f"of {number(warm_up)} to {number(warm_up + float(case.attributes['duration']))} s, about the peak"
+    return f"observed time begins at {number(warm_up)} s"
 
 
 def _place(case: CaseResults, place: int) -> str:

@@ -18,7 +18,7 @@ from matplotlib.text import Annotation, Text
 from matplotlib.transforms import Bbox
 from numpy.typing import NDArray
 
-from crowdsim.plots.style import BLACK, GREY, MM, SMALL, home, text_width, tied, wrapped
+from crowdsim.plots.style import BLACK, GREY, MM, SMALL, home, ours, text_width, tied, wrapped
 
 Floats = NDArray[np.float64]
 Side = Literal["right", "top"]
@@ -66,7 +66,7 @@ class Labels:
 
 
 def settle(labels: Iterable[Labels]) -> None:
-    """Places all labels of a figure and fixes its layout."""
+    """Places all labels of a figure; the layout of a figure of ours is fixed then."""
     wanted = list(labels)
     fig = home(wanted[0].ax)
     fig.draw_without_rendering()
@@ -74,7 +74,8 @@ def settle(labels: Iterable[Labels]) -> None:
         for side in ("right", "top"):
             _spread(group, side)
         _Room(group.ax).place(group.inside)
-    fig.set_layout_engine("none")
+    if ours(fig):
+        fig.set_layout_engine("none")
 
 
 def apart(wanted: Sequence[float], sizes: Sequence[float], low: float, high: float) -> list[float]:
@@ -120,7 +121,7 @@ def _spread(group: Labels, side: Side) -> None:
     data = np.array([(0.0, v) if along else (v, 0.0) for v, _ in items])
     at = [float(v) for v in ax.transData.transform(data)[:, along]]
     reach = sum(sizes) - (high - low)
-    slack = max(reach, 0.0) + (0.0 if along else 20.0 * point)
+    slack = max(reach, 0.0) + (0.5 * max(sizes) if along else 20.0 * point)
     for (_, text), was, now in zip(items, at, apart(at, sizes, low - slack, high + slack), strict=True):
         text.set_transform(ax.transAxes)
         share = (now - low) / (high - low)

@@ -99,10 +99,8 @@ def people(case: Case, realisations: int, *, width: float = WIDTH, foot: str = "
     title = f"Pace of {crowd.persons:,} persons in {over}, shaded: half-power bands of the modes; persons on the deck"
     beside = width >= NARROW
     fig = figure(width, 84.0 if beside else 136.0, title, foot)
-    if beside:
-        grid = fig.add_gridspec(1, 2, width_ratios=(62, 38))
-    else:
-        grid = fig.add_gridspec(2, 1, height_ratios=(60, 40))
+    across = fig.add_gridspec(1, 2, width_ratios=(62, 38)) if beside else None
+    grid = across or fig.add_gridspec(2, 1, height_ratios=(60, 40))
     main, deck = fig.add_subplot(grid[0]), fig.add_subplot(grid[1])
     labels = [_deck(deck, case, crowd, width), _paces(main, case, crowd, width)]
     settle(labels)
@@ -164,7 +162,7 @@ def _deck(ax: Axes, case: Case, crowd: Crowd, width: float) -> Labels:
     edges = np.arange(first, last + step + 1, step)
     share = np.array([crowd.share[a : a + step].sum() for a in edges[:-1]])
     ax.stairs(100.0 * share, edges - 0.5, fill=True, color=STEPS[3], ec=GREY, lw=0.6, gid="share")
-    mean, height = crowd.mean, 118.0 * float(share.max())
+    mean, height = crowd.mean, 130.0 * float(share.max())
     ax.axvline(mean, color=BLACK, lw=0.8, ls=DASHES[1], gid="mean")
     area = case.model.length * case.model.width
     labels.line(

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from pathlib import Path
 from typing import Any
 
@@ -24,6 +25,7 @@ from crowdsim.plots.style import (
     figure,
     styled,
     text_width,
+    tied,
     wrapped,
 )
 from crowdsim.results.sensitivity import Sensitivity, Varied, change_text, span_of_change
@@ -32,7 +34,9 @@ from crowdsim.results.texts import number, span
 ROW = 3.7  # mm a line
 GAP = 0.45  # lines between subjects
 LEAST_REACH = 5.0  # per cent either side of the base that the axis shows at least
+NUMBER = 13.0  # mm for a change and the gap before it
 LABEL_SHARE = 0.34  # of the figure's width, for the labels
+BOLD = 1.12  # bold type is wider
 _POINT = 25.4 / 72.0  # mm
 _HALO = [withStroke(linewidth=1.8, foreground="white")]
 _LONGER, _SHORTER = BLUE, STEPS[3]
@@ -47,15 +51,15 @@ def sensitivity(result: Sensitivity, *, width: float = WIDTH) -> Axes:
     rows, places, heads, height = _places(result)
     foot = (
         f"{result.title} \u00b7 case {result.case} \u00b7 {result.direction}, 95 % value of the peak anywhere on the "
-        f"deck in {span(result.window)} \u00b7 one change at a time, the same random numbers; whiskers: 95 % interval "
-        f"\u00b7 seed {result.seed} \u00b7 {result.realisations:,} realisations \u00b7 crowdsim {result.version}"
+        f"deck in {span(result.window)} \u00b7 seed {result.seed} \u00b7 {result.realisations:,} realisations \u00b7 "
+        f"crowdsim {result.version} \u00b7 one change at a time, the same random numbers; whiskers: 95 % interval"
     )
     title = f"{result.case}: what the 95 % peak of {number(result.base.value)} {UNIT} hangs on"
-    made = figure(width, ROW * height + 16.0, title, foot)
+    made = figure(width, ROW * height + 16.0, title, tied(foot))
     ax = made.add_subplot()
     ax.set_ylim(height - 0.5, -0.6)
-    _axis(ax, result, width)
-    _labels(ax, rows, places, heads, width)
+    beside = _labels(ax, rows, places, heads, width)
+    _axis(ax, result, width, beside)
     for row, y in zip(rows, places, strict=True):
         _row(ax, row, y, width)
     return ax
@@ -94,14 +98,18 @@ def _places(result: Sensitivity) -> tuple[list[Varied], list[float], list[tuple[
     return rows, places, heads, max(y - GAP, 1.0)
 
 
-def _axis(ax: Axes, result: Sensitivity, width: float) -> None:
-    """The change at the bottom, the acceleration that it means at the top, the band of the base between."""
+def _axis(ax: Axes, result: Sensitivity, width: float, beside: float) -> None:
+    """The change at the bottom, the acceleration that it means at the top, the band of the base between.
+
+    beside : taken by labels and values [mm]
+    """
     band = result.sampling
     reached = [x for v in result.variations for x in (v.change, v.low, v.high) if x is not None]
     reached += band or ()
     low = min(-LEAST_REACH, 100.0 * min(reached, default=0.0))
     high = max(LEAST_REACH, 100.0 * max(reached, default=0.0))
-    room = 13.0 / ((1.0 - LABEL_SHARE) * width - 14.0) * (high - low)  # beyond the bars, for their numbers
+    free = max(width - beside, 3.0 * NUMBER)
+    room = NUMBER / (free - 2.0 * NUMBER) * (high - low)  # beyond the bars, for their numbers
     ax.set_xlim(low - room, high + room)
     ax.set_xlabel("change of the 95 % peak, %")
     value = result.base.value
@@ -123,18 +131,19 @@ def _axis(ax: Axes, result: Sensitivity, width: float) -> None:
     else:
         by_chance = _minus(span_of_change(band))
         text = f"grey: {by_chance} by chance in the base; this is all that more realisations could remove"
-        ax.axvspan(100.0 * band[0], 100.0 * band[1], color=BAND, alpha=0.55, lw=0, zorder=0, gid="band")
-    ax.set_title(wrapped(text, (1.0 - LABEL_SHARE) * width - 8.0, FOOT, 3), size=FOOT, color=GREY, loc="left")
+        ax.axvspan(100.0 * band[0], 100.0 * band[1], **BAND, zorder=0, gid="band")
+    ax.set_title(wrapped(text, free, FOOT, 3), size=FOOT, color=GREY, loc="left")
 
 
-def _labels(ax: Axes, rows: list[Varied], places: list[float], heads: list[tuple[str, float]], width: float) -> None:
-    """Subjects and labels to the left, values to the right."""
+def _labels(ax: Axes, rows: list[Varied], places: list[float], heads: list[tuple[str, float]], width: float) -> float:
+    """Subjects and labels to the left, values to the right; the width that they take [mm]."""
     room = LABEL_SHARE * width
-    texts = {y: wrapped(subject, room, SMALL, 1) for subject, y in heads}
-    texts |= {y: f"  {wrapped(row.label, room, SMALL, 1)}" for row, y in zip(rows, places, strict=True)}
+    texts = {y: wrapped(subject, room / BOLD, SMALL, 1) for subject, y in heads}
+    widest = max((BOLD * text_width(t, SMALL) for t in texts.values()), default=0.0)
+    texts |= {y: f"  {_minus(wrapped(row.label, room, SMALL, 1))}" for row, y in zip(rows, places, strict=True)}
+    widest = max([widest, *(text_width(t, SMALL) for t in texts.values())])
     order = sorted(texts)
     ax.set_yticks(order, [texts[y] for y in order])
-    widest = max((text_width(t, SMALL) for t in texts.values()), default=0.0)
     ax.tick_params(axis="y", length=0, pad=widest / _POINT + 3.0)
     subjects = {y for _, y in heads}
     for y, tick in zip(order, ax.get_yticklabels(), strict=True):
@@ -143,22 +152,23 @@ def _labels(ax: Axes, rows: list[Varied], places: list[float], heads: list[tuple
             tick.set_fontweight("bold")
     ax.spines["left"].set_visible(False)
     right = ax.get_yaxis_transform()
-    for row, y in zip(rows, places, strict=True):
-        if row.value is not None:
-            ax.text(1.012, y, number(row.value), transform=right, size=SMALL, va="center", gid="value")
+    values = {y: number(row.value) for row, y in zip(rows, places, strict=True) if row.value is not None}
+    for y, text in values.items():
+        ax.text(1.012, y, text, transform=right, size=SMALL, va="center", gid="value")
     if heads:
         ax.text(1.012, heads[0][1], UNIT, transform=right, size=SMALL, va="center", color=GREY)
+    return widest + max(text_width(t, SMALL) for t in (UNIT, *values.values())) + 8.0
 
 
 def _minus(text: str) -> str:
     """With the sign that numbers on an axis have."""
-    return text.replace("-", "\u2212")
+    return re.sub(r"(?<![^ ])-(?=\d)", "\u2212", text)
 
 
 def _row(ax: Axes, row: Varied, y: float, width: float) -> None:
     """The bar, its interval and its number; or why there is none."""
     if row.change is None:
-        why = wrapped(row.note, 0.5 * (1.0 - LABEL_SHARE) * width, FOOT, 1)
+        why = wrapped(row.note, 0.4 * (1.0 - LABEL_SHARE) * width, FOOT, 1)
         ax.text(
             0.0, y, f" {why}", size=FOOT, color=GREY, va="center", ha="left", style="italic", path_effects=_HALO,
             gid="reason",

@@ -9,7 +9,7 @@ from typing import Any
 from matplotlib.axes import Axes
 from matplotlib.lines import Line2D
 
-from crowdsim.plots.style import BLACK, MM, SMALL, home, text_width
+from crowdsim.plots.style import BLACK, MM, SMALL, grow, home, ours, text_width
 
 ROW = 3.7  # mm
 LINE = 3.6  # mm, of the key below
@@ -48,11 +48,14 @@ def strip(ax: Axes, marks: Sequence[tuple[str, float]], clear: float = 0.8) -> A
         named.append((name + arrow, width * (inside - low) / (high - low)))
     placed = _rows([(text_width(name, SMALL), x) for name, x in named], width)
     if placed is None:
-        letters = [chr(ord("A") + i % 26) for i in range(len(named))]
+        letters = [chr(ord("A") + i % 26) + (str(i // 26) if i >= 26 else "") for i in range(len(named))]
         _key(ax, [f"{letter}  {name}" for letter, (name, _) in zip(letters, named, strict=True)])
         named = [(letter, x) for letter, (_, x) in zip(letters, named, strict=True)]
         placed = _rows([(text_width(name, SMALL), x) for name, x in named], width) or _stacked(named, width)
     rows = 1 + max(p.row for p in placed)
+    if ours(fig):
+        grow(fig, panels=rows * ROW + clear)
+        height += rows * ROW + clear
     left = max(height - rows * ROW - clear, 0.3 * height)
     above = ax.inset_axes((0.0, 1.0 + clear / left, 1.0, rows * ROW / left))
     above.set_xlim(0.0, width)
@@ -74,17 +77,14 @@ def _key(ax: Axes, names: Sequence[str]) -> None:
     fig = home(ax)
     handles = [Line2D([], [], ls="none") for _ in names]
     style: dict[str, Any] = {"handlelength": 0.0, "handletextpad": 0.0, "fontsize": SMALL, "borderpad": 0.2}
-    engine: Any = fig.get_layout_engine()
-    if engine is None or "rect" not in engine.get():
+    if not ours(fig):
         ax.legend(handles, names, loc="best", **style)
         return
-    # the layout is given room for the key below the panels; "outside" would put it over the foot line
+    # not by "outside", which would put it over the foot line
     columns = max(1, int((fig.get_figwidth() / MM - 8.0) / max(text_width(name, SMALL) + 4.0 for name in names)))
-    x, y, w, h = engine.get()["rect"]
-    deep = min((-(-len(names) // columns) * LINE + 1.5) * MM / fig.get_figheight(), 0.5 * h)
-    engine.set(rect=(x, y + deep, w, h - deep))
+    box = grow(fig, below=-(-len(names) // columns) * LINE + 1.5)
     made = fig.legend(
-        handles, names, loc="lower left", bbox_to_anchor=(x, y, w, deep), ncols=columns, borderaxespad=0.0,
+        handles, names, loc="lower left", bbox_to_anchor=box, ncols=columns, borderaxespad=0.0,
         labelspacing=0.25, columnspacing=1.5, **style,
     )  # fmt: skip
     made.set_in_layout(False)

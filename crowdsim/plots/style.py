@@ -17,8 +17,10 @@ from matplotlib.axes import Axes
 from matplotlib.figure import Figure
 from matplotlib.font_manager import FontProperties
 from matplotlib.textpath import text_to_path
+from matplotlib.transforms import ScaledTranslation
 from numpy.typing import NDArray
 
+from crowdsim.bridge.modal import DIRECTIONS
 from crowdsim.errors import ResultsError
 from crowdsim.guides.criterion import Criterion
 from crowdsim.results.judgement import Asked, asked
@@ -38,7 +40,8 @@ STEPS = ("#f3f8fc", "#dfebf6", "#c6dbee", "#a8c8e3")  # one hue, darker with eve
 BAND: dict[str, Any] = {"color": "#6a6a6a", "alpha": 0.33, "lw": 0.0}  # darker than any class, in print too
 DASHES: tuple[Any, ...] = ("-", (0, (5, 2)), (0, (1, 1.5)), (0, (6, 2, 1, 2)), (0, (3, 1.5, 1, 1.5, 1, 1.5)))
 
-_RC = {
+_OURS = "crowdsim"
+_RC: dict[Any, Any] = {
     "font.family": "sans-serif", "font.sans-serif": ["DejaVu Sans"], "font.size": TEXT,
     "axes.titlesize": TEXT, "axes.labelsize": TEXT, "xtick.labelsize": SMALL, "ytick.labelsize": SMALL,
     "legend.fontsize": SMALL, "figure.titlesize": 9.0, "figure.dpi": DPI,
@@ -67,7 +70,9 @@ def styled() -> Iterator[None]:
 
 def text_width(text: str, size: float = TEXT) -> float:
     """Width of a text of `size` points [mm]."""
-    width, _, _ = text_to_path.get_text_width_height_descent(text, FontProperties("DejaVu Sans", size=size), False)
+    width, _, _ = text_to_path.get_text_width_height_descent(
+        text, FontProperties(family="DejaVu Sans", size=size), False
+    )
     return float(width) * 25.4 / 72.0
 
 
@@ -112,16 +117,36 @@ def figure(width: float, height: float, title: str, foot: str) -> Figure:
     bottom = 3.1 * (low.count("\n") + 1) + 2.0 if low else 1.0
     whole = height + top + bottom
     made = Figure(figsize=(width * MM, whole * MM), layout="constrained", dpi=DPI)
+    made.set_gid(_OURS)
     engine: Any = made.get_layout_engine()
     engine.set(
         rect=(2.0 / width, bottom / whole, 1.0 - 4.0 / width, height / whole),
         w_pad=0.6 * MM, h_pad=0.8 * MM, wspace=0.02, hspace=0.02,
     )  # fmt: skip
+    # held to the corners in millimetres, so that the figure may still grow
     if head:
-        made.text(2.0 / width, 1.0 - 1.2 / whole, head, size=9.0, va="top", ha="left", linespacing=1.15, gid="title")
+        corner = made.transFigure + ScaledTranslation(2.0 * MM, -1.2 * MM, made.dpi_scale_trans)
+        made.text(0.0, 1.0, head, size=9.0, va="top", ha="left", linespacing=1.15, gid="title", transform=corner)
     if low:
-        made.text(2.0 / width, 1.2 / whole, low, size=FOOT, color=GREY, va="bottom", ha="left", gid="foot")
+        corner = made.transFigure + ScaledTranslation(2.0 * MM, 1.2 * MM, made.dpi_scale_trans)
+        made.text(0.0, 0.0, low, size=FOOT, color=GREY, va="bottom", ha="left", gid="foot", transform=corner)
     return made
+
+
+def ours(fig: Figure) -> bool:
+    """Whether `figure` made it."""
+    return fig.get_gid() == _OURS
+
+
+def grow(fig: Figure, panels: float = 0.0, below: float = 0.0) -> tuple[float, float, float, float]:
+    """Makes a figure of ours higher: room for the panels, and under them [mm]. Gives the box of the latter."""
+    engine: Any = fig.get_layout_engine()
+    x, y, w, h = engine.get()["rect"]
+    before = fig.get_figheight() / MM
+    whole = before + panels + below
+    fig.set_figheight(whole * MM)
+    engine.set(rect=(x, (y * before + below) / whole, w, (h * before + panels) / whole))
+    return x, y * before / whole, w, below / whole
 
 
 def home(ax: Axes) -> Figure:
@@ -134,7 +159,7 @@ def home(ax: Axes) -> Figure:
 def plain(ax: Axes, width: float) -> None:
     """Few ticks where the figure is narrow."""
     if width < NARROW and ax.get_xscale() == "linear":
-        ax.locator_params(axis="x", nbins=5)
+        ax.locator_params(axis="x", nbins=5 if width > 75.0 else 3)
     if ax.get_yscale() == "linear":
         ax.locator_params(axis="y", nbins=5)
 
@@ -164,8 +189,9 @@ def direction_of(case: CaseResults) -> str:
     """The first direction with any response. Raises ResultsError where nothing moves."""
     if not case.realisations:
         raise ResultsError(f"case {case.name!r}: no realisation is in the file: nothing to draw")
-    for direction, values in case.envelope.items():
-        if values.size and float(values.max()) > 0.0:
+    for direction in DIRECTIONS:
+        values = case.envelope.get(direction)
+        if values is not None and values.size and float(values.max()) > 0.0:
             return direction
     raise ResultsError(f"case {case.name!r}: the response is 0 everywhere: nothing to draw")
 

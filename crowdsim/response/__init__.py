@@ -1,4 +1,4 @@
-"""Measures across realisations: percentiles, distribution-free intervals, summaries.
+"""Measures across realisations: percentiles, windows, verdicts, laws of maxima, paired changes.
 
 Depends on numpy, and scipy.special on use. Sees no scenario and no file.
 """

@@ -152,6 +152,16 @@ def span_of_change(reach: tuple[float, float]) -> str:
     return low if low == high else f"{low.removesuffix(' %')} to {high}"
 
 
+def cases_for(path: str | Path, scenario: str) -> dict[str, str]:
+    """Cases of a results file by name, with their keys; ResultsError where it is not of the scenario text given."""
+    with open_file(path) as file:
+        if str(file.attrs["scenario"]) != scenario:
+            raise ResultsError(
+                f"{path}: holds results of another scenario; run simulate with this one, or name its file"
+            )
+        return {str(group.attrs["name"]): key for key, group in file["cases"].items()}
+
+
 def write_sensitivity(path: str | Path, scenario: str, result: Sensitivity) -> None:
     """Puts `result` into the results file at `path`, in place of an earlier one of the same case.
 
@@ -161,12 +171,7 @@ def write_sensitivity(path: str | Path, scenario: str, result: Sensitivity) -> N
     file that is none of ours, of another scenario, without the case, or that cannot be written.
     """
     path = Path(path)
-    with open_file(path) as file:
-        if str(file.attrs["scenario"]) != scenario:
-            raise ResultsError(
-                f"{path}: holds results of another scenario; run simulate with this one, or name its file"
-            )
-        names = {str(group.attrs["name"]): key for key, group in file["cases"].items()}
+    names = cases_for(path, scenario)
     if result.case not in names:
         raise ResultsError(f"{path}: has no case {result.case!r}; cases there: {', '.join(names)}")
     temporary = path.with_name(f".{path.name}.{os.getpid()}.part")

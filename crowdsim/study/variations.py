@@ -251,7 +251,8 @@ class _Maker:
 
         for factor in STRIDES:
             yield self._make(
-                subject, f"mean {subject} {_signed(factor)}", OWN_CHOICE, "at the same pace: people are longer or shorter on the deck",
+                subject, f"mean {subject} {_signed(factor)}", OWN_CHOICE,
+                "at the same pace: people are longer or shorter on the deck",
                 stream=self._with({s.name: stride(s, factor) for s in self.streams}),
             )  # fmt: skip
 

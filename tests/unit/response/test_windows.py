@@ -8,6 +8,7 @@ resampled realisations, beside that of independent windows.
 from __future__ import annotations
 
 import math
+from itertools import pairwise
 
 import numpy as np
 import pytest
@@ -65,7 +66,7 @@ def test_an_interval_from_72_realisations_on(windows: int) -> None:
 
 
 def test_the_confidence_asked_for_counts() -> None:
-    """90 % at 58 realisations and not at 57: 0.95^58 <= 0.05 < 0.95^57 (computed)."""
+    """90 % confidence at 59 realisations and not at 58: 0.95^59 <= 0.05 < 0.95^58 (computed)."""
     assert math.ceil(math.log(0.05) / math.log(0.95) - 1e-9) == 59
     assert window_percentile(peaks(58, 2), confidence=0.90).high is None
     assert window_percentile(peaks(59, 2), confidence=0.90).high is not None
@@ -245,7 +246,7 @@ def test_few_beyond_are_trusted_no_more_than_the_95_percent_value() -> None:
 def test_shares_of_classes_add_to_one(windows: int) -> None:
     values = peaks(77, windows)
     edges = [0.0, 0.9, 1.0, 1.3, np.inf]
-    shares = [window_share(values, low, high) for low, high in zip(edges[:-1], edges[1:], strict=True)]
+    shares = [window_share(values, low, high) for low, high in pairwise(edges)]
     assert sum(s.value for s in shares) == pytest.approx(1.0, abs=1e-15)
     for share, low, high in zip(shares, edges[:-1], edges[1:], strict=True):
         assert share.value == np.mean((values >= low) & (values < high))

@@ -1,0 +1,44 @@
+"""Saves a figure: moved into place whole, equal bits for equal inputs."""
+
+from __future__ import annotations
+
+import os
+from pathlib import Path
+from typing import Any
+
+from matplotlib.axes import Axes
+
+from crowdsim.errors import ResultsError
+from crowdsim.plots.style import home
+
+ENDINGS = ("png", "svg", "pdf")
+
+
+def check_place(place: Path) -> None:
+    """Raises ResultsError where no figure can be saved as `place`."""
+    if place.suffix.lower().removeprefix(".") not in ENDINGS:
+        raise ResultsError(f"{place}: a figure ends in .png, .svg or .pdf")
+    if place.is_dir():
+        raise ResultsError(f"{place}: is a folder; --out takes the name of a file")
+    if not place.parent.is_dir():
+        raise ResultsError(f"{place}: there is no folder {place.parent}; make it first")
+
+
+def save(ax: Axes, place: Path, title: str) -> None:
+    """Saves the figure of `ax` as `place`, with `title` in its metadata. Raises ResultsError; nothing stays half done."""
+    ending = place.suffix.lower().removeprefix(".")
+    # no date: equal inputs give equal bits
+    named: dict[str, dict[str, Any]] = {
+        "png": {"Title": title, "Software": "crowdsim"},
+        "svg": {"Title": title, "Creator": "crowdsim", "Date": None},
+        "pdf": {"Title": title, "Creator": "crowdsim", "Producer": None, "CreationDate": None},
+    }
+    temporary = place.with_name(f".{place.name}.{os.getpid()}.part")
+    try:
+        home(ax).savefig(temporary, format=ending, metadata=named[ending])
+        os.replace(temporary, place)
+    except OSError as error:
+        where = place.parent.resolve()
+        raise ResultsError(f"{place}: cannot be written in {where} ({error.strerror or 'not possible'})") from None
+    finally:
+        temporary.unlink(missing_ok=True)
