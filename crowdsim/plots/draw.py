@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import tomllib
-import warnings
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from pathlib import Path
@@ -13,10 +12,12 @@ from matplotlib.axes import Axes
 from crowdsim.errors import ResultsError
 from crowdsim.plots.envelope import envelope
 from crowdsim.plots.exceedance import FAMILIES, exceedance
+from crowdsim.plots.save import ENDINGS as ENDINGS
 from crowdsim.plots.save import check_place, save
 from crowdsim.plots.style import WIDTH, styled
 from crowdsim.results.reader import CaseResults, Results, open_results
 
+_save = save
 NARROWEST, WIDEST = 60.0, 400.0  # mm
 
 
@@ -105,9 +106,7 @@ def draw(
         known = ", ".join(chosen.points.name)
         raise ResultsError(f"no point is called {point!r}; points of case {chosen.name!r}: {known}")
     wish = Wish(results, chosen, point, fit, marks, width, _foot(results, chosen))
-    with styled(), warnings.catch_warnings():
-        # a title in a script that the typeface lacks: its letters become boxes, and that is seen
-        warnings.filterwarnings("ignore", message=r"Glyph .* missing")
+    with styled():
         save(FIGURES[what](wish), place, wish.foot)
     return place
 

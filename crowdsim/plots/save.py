@@ -25,7 +25,7 @@ def check_place(place: Path) -> None:
 
 
 def save(ax: Axes, place: Path, title: str) -> None:
-    """Saves the figure of `ax` as `place`, with `title` in its metadata. Raises ResultsError; nothing stays half done."""
+    """Saves the figure of `ax` as `place`, `title` in its metadata. Raises ResultsError; nothing half done stays."""
     ending = place.suffix.lower().removeprefix(".")
     # no date: equal inputs give equal bits
     named: dict[str, dict[str, Any]] = {

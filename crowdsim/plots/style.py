@@ -7,6 +7,7 @@ no state shared with a program that draws figures of its own.
 from __future__ import annotations
 
 import re
+import warnings
 from collections.abc import Iterator
 from contextlib import contextmanager
 from typing import Any
@@ -62,7 +63,9 @@ def styled() -> Iterator[None]:
 
     Serves as a decorator too.
     """
-    with matplotlib.rc_context():
+    with matplotlib.rc_context(), warnings.catch_warnings():
+        # of a script that the typeface lacks the letters become boxes, and that is seen
+        warnings.filterwarnings("ignore", message=r"Glyph .* missing")
         matplotlib.rcdefaults()
         matplotlib.rcParams.update(_RC)
         yield

@@ -35,7 +35,8 @@ def realisations_to_decide(
     each = exceedance.effective / realisations
     if apart <= 0.0:
         return None
-    need = (z * z * share * (1.0 - share) / apart**2 + 1.0 / apart) / each  # a rank may be off by one
+    ranks = 2.0 if exceedance.value > 1.0 - share else 1.0  # by which whole ranks miss the normal approximation
+    need = (z * z * share * (1.0 - share) / apart**2 + ranks / apart) / each
     count = max(least_for_interval(share, confidence), math.ceil(need), math.ceil(1.05 * realisations))
     count = _round_up(count)
     return count if count <= OUT_OF_REACH else None
@@ -53,7 +54,7 @@ def realisations_for_width(value: Percentile, realisations: int, wanted: float) 
     half = relative_half_width(value)
     if half is None:
         return None
-    return max(least_for_interval(value.share), _round_up(math.ceil(realisations * (half / wanted) ** 2)))
+    return max(least_for_interval(value.share), _round_up(math.ceil(realisations * (half / wanted) ** 2 - 1e-6)))
 
 
 def _round_up(count: int) -> int:

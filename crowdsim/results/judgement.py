@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 
 from crowdsim.guides.catalogue import CRITERIA
 from crowdsim.guides.criterion import Criterion
-from crowdsim.response.statistics import Percentile, least_for_interval
+from crowdsim.response.statistics import Percentile, least_for_interval, percentile_rank
 from crowdsim.response.verdict import (
     Verdict,
     realisations_for_width,
@@ -22,7 +22,6 @@ from crowdsim.response.windows import Proportion, window_exceedance, window_perc
 from crowdsim.results.texts import number, percent, span
 
 Floats = NDArray[np.float64]
-FEW = 20  # windows below which a 95 % value is the largest of all
 CLASS_SHARE = 0.95  # the percentile of the peak whose class is the case's
 LOADED = ("vertical",)  # directions in which forces act in this version; others are not judged
 
@@ -203,7 +202,8 @@ def _sentence(
     common: dict[str, Any], value: Percentile, name: str | None, wants: Asked, says: Verdict | None, needed: int | None
 ) -> str:
     """Ready to paste: percentile, window, case, value, interval, class, limit, verdict."""
-    many = common["realisations"] * common["windows"] >= FEW
+    count = common["realisations"] * common["windows"]
+    many = percentile_rank(count, value.share) < count
     number_of = f"{common['realisations']:,} simulated realisation{'s' if common['realisations'] != 1 else ''}"
     if common["windows"] > 1:
         number_of += f" of {common['windows']} windows each"

@@ -8,14 +8,14 @@ from pathlib import Path
 from typing import Any
 
 from crowdsim.response.extreme_likelihood import Family
+from crowdsim.response.statistics import Distribution1D
 from crowdsim.results.fits import FittedCase, fit_file
 from crowdsim.results.reader import open_file
 from crowdsim.results.sensitivity import Sensitivity, read_sensitivity
 from crowdsim.results.summary import CaseSummary, Summary, summarise
 from crowdsim.scenario.reader import Scenario, parse_scenario
 from crowdsim.study.estimate import CROSSING, NARROW_PEAK, PEAK, RMS, SQUARE_ROOT, STEADY, Estimates, Method, estimate
-
-_TWO_SIDED = 1.959964  # standard errors of a mean, 95 %
+from crowdsim.study.situation import Situation
 
 
 @dataclass(frozen=True)
@@ -62,7 +62,7 @@ class Comparison:
         return tuple(
             r
             for r in self.of(case)
-            if r.method.mode == top.mode
+            if (r.method.mode, r.method.direction) == (top.mode, top.direction)
             and r.method.measure in (PEAK, RMS)
             and (r.method.harmonic is None or (r.method.harmonic, r.method.stream) == same)
         )
@@ -105,7 +105,8 @@ def compare(summary: Summary, scenario: Scenario) -> Comparison:
     """Puts the formulas for `scenario` beside the numbers of a run of it."""
     estimates = estimate(scenario)
     by_name = {c.name: c for c in summary.cases}
-    rows = [_compared(m, by_name[m.case]) for m in estimates.methods if m.case in by_name]
+    now = {s.name: s for s in estimates.situations}
+    rows = [_compared(m, now[m.case], by_name[m.case]) for m in estimates.methods if m.case in by_name]
     return Comparison(summary, estimates, tuple(rows))
 
 
@@ -126,29 +127,37 @@ def compare_file(
     return replace(comparison, fits=fits, sensitivities=read_sensitivity(path))
 
 
-def _compared(method: Method, case: CaseSummary) -> Compared:
-    simulated, low, high = _simulated(method, case)
+def _compared(method: Method, now: Situation, case: CaseSummary) -> Compared:
+    simulated, low, high = _simulated(method, now, case)
     value = method.value
     if value is None or not simulated:
         return Compared(method, simulated, low, high, None, None, None)
     return Compared(
         method, simulated, low, high, value / simulated,
-        value / high if high else None, value / low if low else None,
+        value / high if high else None, value / low if low is not None and low > 0.0 else None,
     )  # fmt: skip
 
 
-def _simulated(method: Method, case: CaseSummary) -> tuple[float | None, float | None, float | None]:
+def _simulated(method: Method, now: Situation, case: CaseSummary) -> tuple[float | None, float | None, float | None]:
     if method.measure == PEAK:
         for deck in case.deck:
             if deck.direction == method.direction and deck.judgement is not None:
                 value = deck.judgement.value
                 return value.value, value.low, value.high
     if method.measure == RMS:
+        s, e, _ = now.model.largest(now.model.mode(method.mode), method.direction)
         for point in case.points:
-            modes = point.name.removesuffix(f" {point.direction}").split("+")
-            if point.direction == method.direction and method.mode in modes:
-                if point.rms.sd is None:
-                    return point.rms.mean, None, None
-                half = _TWO_SIDED * point.rms.sd / math.sqrt(point.rms.count)
-                return point.rms.mean, point.rms.mean - half, point.rms.mean + half
+            near = abs(point.s - s) < 1e-6 * now.model.length and abs(point.e - e) < 1e-9
+            if near and point.direction == method.direction:
+                half = _half_width(point.rms)
+                return point.rms.mean, point.rms.mean - half if half else None, point.rms.mean + half if half else None
     return None, None, None
+
+
+def _half_width(values: Distribution1D) -> float | None:
+    """Half the 95 % interval of a mean, by Student's distribution."""
+    if values.sd is None or values.count < 2:
+        return None
+    from scipy.special import stdtrit
+
+    return float(stdtrit(values.count - 1, 0.975)) * values.sd / math.sqrt(values.count)

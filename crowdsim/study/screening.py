@@ -92,7 +92,7 @@ def _row(
     low, high = min(states), max(states)
     eur = _named(EUR_23984, direction, gait, harmonic, low, high)
     setra = _named(SETRA_2006, direction, gait, harmonic, low, high)
-    en = _named(EN_1990, direction, gait, harmonic, low, high)
+    en = _named(EN_1990, direction, "walking", 1, low, high)  # whatever the harmonic
     reached = _reached(situations, direction, gait, harmonic, (states[0], states[1])) if direction == "vertical" else ()
     if not (eur or setra or reached):
         return None

@@ -18,7 +18,7 @@ from crowdsim.study.simulate import simulate
 SCENARIOS = Path(crowdsim.__file__).parents[1] / "scenarios"
 # what is changed so that the test is quick; 80 realisations are enough for an interval
 SHORTER = {
-    "market-day": (4, '"15 min"', '"5 min"'),
+    "market-day": (4, '"15 min"', '"2 min"'),
     "weekday-commuters": (80, '"15 min"', '"8 min"'),
     "one-walker": (80, "75.0", "75.0"),
     "joggers-among-walkers": (12, '"10 min"', '"10 min"'),
@@ -50,12 +50,18 @@ def read(files: dict[str, Path]) -> dict[str, Results]:
 
 @pytest.fixture(scope="session")
 def drawn(read: dict[str, Results]) -> Draw:
-    """Draws a figure as `draw` does, without saving it."""
+    """Draws a figure as `draw` does, without saving it; once where nothing special is asked for."""
+    kept: dict[tuple[str, str, float], Axes] = {}
 
-    def one(name: str, what: str, width: float = 170.0, results: Results | None = None, **wishes: Any) -> Axes:
-        whole = results or read[name]
-        case = whole.cases[-1 if name in LAST else 0]
+    def one(name: str, what: str, width: float = 170.0, **wishes: Any) -> Axes:
+        key = (name, what, width)
+        if key in kept and not wishes:
+            return kept[key]
+        case = read[name].cases[-1 if name in LAST else 0]
         wish = {"point": None, "fit": None, "marks": (), **wishes}
-        return FIGURES[what](Wish(results=whole, case=case, width=width, foot=_foot(whole, case), **wish))
+        ax = FIGURES[what](Wish(results=read[name], case=case, width=width, foot=_foot(read[name], case), **wish))
+        if not wishes:
+            kept[key] = ax
+        return ax
 
     return one

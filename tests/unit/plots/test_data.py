@@ -188,6 +188,19 @@ def test_exceedance_is_the_share_of_windows_above(drawn: Draw, read: dict[str, R
     assert f"exceeded in {100 * limit.value:.2g} %" in words(ax)
 
 
+def test_many_windows_stay_a_small_line_with_its_tail_whole(read: dict[str, Results]) -> None:
+    case = read["weekday-commuters"].cases[0]
+    peaks = np.random.default_rng(5).gumbel(0.5, 0.1, (20_000, 2)).clip(0.01)
+    many = replace(case, deck_window_peak={"vertical": peaks})
+    x, y = xy(exceedance(many), "share")
+    assert x.size < 3100
+    np.testing.assert_array_equal(x[-1000:], np.sort(peaks, axis=None)[-1000:])
+    for a in np.linspace(0.3, 1.0, 50):
+        # between two steps drawn lie 40,000/1500 = 27 peaks, 0.07 %
+        shown = y[np.searchsorted(x, a, side="right") - 1]
+        assert 0.0 <= shown - np.mean(peaks > a) < 7e-4
+
+
 def test_a_record_shorter_than_the_window_is_taken_whole_and_said(read: dict[str, Results]) -> None:
     case = read["weekday-commuters"].cases[0]
     short = replace(

@@ -76,16 +76,16 @@ def test_each_case_has_its_own(scenario: Callable[..., Scenario]) -> None:
 
 
 @pytest.mark.parametrize(
-    ("duration", "given", "timed", "key", "parts"),
+    ("duration", "given", "key", "parts"),
     [
-        (100.0, 240.0, False, "comfort.window", ["240 s is longer than the observed 100 s", "no whole window fits",
+        (100.0, 240.0, "comfort.window", ["240 s is longer than the observed 100 s", "no whole window fits",
                                                  "not met but never met", "make duration at least as long"]),
-        (100.0, None, False, "run.duration", ["100 s is shorter than the usual comfort window of 240 s",
+        (100.0, None, "run.duration", ["100 s is shorter than the usual comfort window of 240 s",
                                               "the whole record of 100 s", "a longer window has higher peaks"]),
     ],
 )  # fmt: skip
 def test_what_is_said(
-    scenario: Callable[..., Scenario], duration: float, given: float | None, timed: bool, key: str, parts: list[str]
+    scenario: Callable[..., Scenario], duration: float, given: float | None, key: str, parts: list[str]
 ) -> None:
     _, (finding,) = about_windows(scenario(*changes(duration, given)))
     assert (finding.level, finding.key) == ("warning", key)
