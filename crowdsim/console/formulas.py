@@ -3,11 +3,14 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from typing import TYPE_CHECKING
 
 from crowdsim.console.base import Console, interval_text, or_dash
 from crowdsim.results.texts import number
-from crowdsim.study.compare import Compared
 from crowdsim.study.estimate import Method
+
+if TYPE_CHECKING:  # `estimate` answers at once: nothing that opens a results file is loaded for it
+    from crowdsim.study.compare import Compared
 
 _ORDINAL = {None: "", 1: "1st", 2: "2nd", 3: "3rd"}
 

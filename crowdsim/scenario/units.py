@@ -25,6 +25,20 @@ KINDS = {
     "rotation": ("rad", "0.4 rad"),
     "flow": ("1/h", "900 per hour"),
 }
+# the usual units, to spare the half second that pint takes to load; a test holds them to pint's own
+USUAL = {
+    "length": {"m": 1.0, "cm": 0.01, "mm": 0.001, "km": 1000.0},
+    "mass": {"kg": 1.0, "t": 1000.0, "g": 0.001},
+    "force": {"N": 1.0, "kN": 1000.0},
+    "weight": {"N": 1.0, "kN": 1000.0, "kg": GRAVITY},
+    "frequency": {"Hz": 1.0, "per minute": 1.0 / 60.0, "1/s": 1.0},
+    "fraction": {"%": 0.01},
+    "time": {"s": 1.0, "min": 60.0, "h": 3600.0},
+    "speed": {"m/s": 1.0, "km/h": 1.0 / 3.6},
+    "acceleration": {"m/s2": 1.0},
+    "density": {"1/m2": 1.0, "persons/m2": 1.0},
+    "flow": {"per hour": 1.0, "1/h": 1.0, "persons/h": 1.0, "per minute": 60.0},
+}
 _PINT_UNIT = {"m/s2": "m/s**2", "1/m2": "1/m**2", "1/h": "1/hour", "": "dimensionless"}
 _NUMBER = re.compile(r"^\s*([+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?)\s*(.*?)\s*$")
 _UNIT = re.compile(r"(?=.*[A-Za-z%])[\w\s%/*^.()°-]+")
@@ -70,6 +84,11 @@ def parse(kind: str, value: object, notes: list[str] | None = None) -> float:
         raise UnitError(f"{value!r}: a comma", "a decimal point: " + value.replace(",", ".", 1))
     if not unit:
         raise UnitError(f"{value!r} has no unit", allowed)
+    factor = USUAL.get(kind, {}).get(unit)
+    if factor is not None and math.isfinite(number * factor):
+        if kind == "weight" and unit == "kg":
+            _mass_taken(value, number * factor, notes)
+        return number * factor
     if not _UNIT.fullmatch(unit) or _POWER_OF_NUMBER.search(unit):
         raise UnitError(f"{value!r}: {unit!r} is no unit", allowed)
     if re.search(r"\btons?\b", unit, re.IGNORECASE):
@@ -82,6 +101,11 @@ def parse(kind: str, value: object, notes: list[str] | None = None) -> float:
     text = re.sub(r"(?<=[a-z])([23])\b", r"**\1", text)
     target = _PINT_UNIT.get(KINDS[kind][0], KINDS[kind][0])
     return _convert(kind, value, number, text or "dimensionless", target, notes, allowed)
+
+
+def _mass_taken(given: str, newton: float, notes: list[str] | None) -> None:
+    if notes is not None:
+        notes.append(f"weight {given!r} taken as {newton:.4g} N (times {GRAVITY} m/s2)")
 
 
 def _convert(
@@ -102,8 +126,7 @@ def _convert(
             raise UnitError(f"{given!r} has an angle in it", hint)
         if kind == "weight" and quantity.check("[mass]"):
             newton = float(quantity.to("kg").magnitude) * GRAVITY
-            if notes is not None:
-                notes.append(f"weight {given!r} taken as {newton:.4g} N (times {GRAVITY} m/s2)")
+            _mass_taken(given, newton, notes)
             return newton
         result = float(quantity.to(target).magnitude)
     except UnitError:

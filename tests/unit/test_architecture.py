@@ -128,9 +128,11 @@ print("pint" in sys.modules, "numba" in sys.modules, "h5py" in sys.modules, "mat
 """
 
 
-def test_pint_is_loaded_for_a_unit_string_only(python: Callable[..., str], clean: str) -> None:
+def test_pint_is_loaded_for_an_unusual_unit_only(python: Callable[..., str], clean: str) -> None:
     assert python(UNITS.format(text=clean)).split() == ["False"] * 4
-    with_units = clean.replace("length = 48.0", 'length = "48 m"')
+    usual = clean.replace("length = 48.0", 'length = "48 m"')
+    assert python(UNITS.format(text=usual)).split() == ["False"] * 4
+    with_units = clean.replace("length = 48.0", 'length = "157.5 ft"')
     assert python(UNITS.format(text=with_units)).split() == ["True", "False", "False", "False"]
 
 

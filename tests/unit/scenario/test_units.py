@@ -9,6 +9,7 @@ import math
 
 import pytest
 
+from crowdsim.scenario import units
 from crowdsim.scenario.units import GRAVITY, KINDS, UnitError, allowed_text, parse
 
 # conversions by hand from the definitions (min = 60 s, in = 25.4 mm, lb = 0.45359237 kg, lbf = lb x 9.80665 m/s2)
@@ -150,3 +151,14 @@ def test_a_mass_as_weight_leaves_a_note_with_both_numbers() -> None:
     assert "9.81" in notes[0]
     assert parse("weight", "750 N", notes) == 750.0
     assert len(notes) == 1
+
+
+@pytest.mark.parametrize(("kind", "unit"), [(kind, unit) for kind, usual in units.USUAL.items() for unit in usual])
+def test_a_usual_unit_is_what_pint_makes_of_it(kind: str, unit: str, monkeypatch: pytest.MonkeyPatch) -> None:
+    values = (0.5, 1.0, 1.92, 38.5, 115.0, 900.0)
+    notes: list[str] = []
+    quick = [parse(kind, f"{x} {unit}", notes) for x in values]
+    monkeypatch.setattr(units, "USUAL", {})
+    others: list[str] = []
+    assert quick == [parse(kind, f"{x} {unit}", others) for x in values]  # to the last bit
+    assert notes == others
