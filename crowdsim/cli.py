@@ -173,15 +173,29 @@ def sensitivity(
     from crowdsim.console.base import Console
     from crowdsim.console.progress import RunProgress
     from crowdsim.console.sensitivity import sensitivity as show
-    from crowdsim.results.sensitivity import write_sensitivity
+    from crowdsim.results.sensitivity import cases_for, write_sensitivity
     from crowdsim.scenario.reader import read_scenario
     from crowdsim.study.sensitivity import sensitivity as study
 
     console = Console(quiet=quiet, json=json)
     read = read_scenario(scenario)
+    if into is not None:  # what cannot be kept is said before a minute of work
+        cases_for(into, read.text)
+    if out is not None:
+        from crowdsim.plots.save import check_place, check_width
+
+        check_place(out)
+        check_width(width)
     with RunProgress(console) as progress:
         result = study(read, case=case, realisations=realisations, seed=seed, workers=workers, progress=progress)
     show(console, result)
+    if into is not None:
+        write_sensitivity(into, read.text, result)
+        console.note(f"kept in {into}")
+    if out is not None:
+        from crowdsim.plots.sensitivity import draw_sensitivity
+
+        console.note(f"drawn: {draw_sensitivity(result, out, width=width)}")
 
 
 @app.command()

@@ -22,19 +22,20 @@ def sensitivity(console: Console, result: Sensitivity) -> None:
         f"{interval_text(result.base.low, result.base.high)})."
     )
     rows = []
-    subject, remark = "", ""
+    remarks: dict[str, list[str]] = {}
+    subject = ""
     for v in result.variations:
         change = "-" if v.change is None else change_text(v.change)
-        said = "; ".join(t for t in (v.source, v.note) if t)
         between = "none" if v.low is None or v.high is None else f"{change_text(v.low)} to {change_text(v.high)}"
-        rows.append(["" if v.subject == subject else v.subject, v.label, "-" if v.value is None else number(v.value),
-                     change, between, "" if said == remark else said])  # fmt: skip
-        subject, remark = v.subject, said
-    columns = [("of", "l"), ("changed to", "l"), ("95 % peak, m/s2", "r"), ("change", "r"),
-               ("its 95 % interval", "r"), ("source, remark", "l")]  # fmt: skip
-    if not console.wide:
-        columns, rows = columns[:4], [row[:4] for row in rows]
+        value = "-" if v.value is None else number(v.value)
+        rows.append(["" if v.subject == subject else v.subject, v.label, value, change, between])
+        subject = v.subject
+        for said in (v.source, *v.note.split("; ")):
+            if said:
+                remarks.setdefault(said, []).append(v.label)
+    columns = [("of", "k"), ("changed to", "l"), ("95 % peak, m/s2", "r"), ("change", "r"), ("its 95 % interval", "r")]
     console.table("One change at a time", columns, rows)
+    console.items("Where the other values come from", [f"{', '.join(of)}: {said}" for said, of in remarks.items()])
     console.line(result.text())
     if result.not_varied:
         console.line(result.not_varied_text())

@@ -12,13 +12,9 @@ from matplotlib.axes import Axes
 from crowdsim.errors import ResultsError
 from crowdsim.plots.envelope import envelope
 from crowdsim.plots.exceedance import FAMILIES, exceedance
-from crowdsim.plots.save import ENDINGS as ENDINGS
-from crowdsim.plots.save import check_place, save
+from crowdsim.plots.save import check_place, check_width, save
 from crowdsim.plots.style import WIDTH, styled
 from crowdsim.results.reader import CaseResults, Results, open_results
-
-_save = save
-NARROWEST, WIDEST = 60.0, 400.0  # mm
 
 
 @dataclass(frozen=True)
@@ -117,8 +113,7 @@ def _check(
     if what not in FIGURES:
         raise ResultsError(f"no figure is called {what!r}; known: {', '.join(FIGURES)}")
     check_place(place)
-    if not NARROWEST <= width <= WIDEST:
-        raise ResultsError(f"width {width:g} mm: {NARROWEST:g} to {WIDEST:g} mm are possible")
+    check_width(width)
     if point is not None and what != "history":
         raise ResultsError(f"a point is for the figure 'history', not {what!r}")
     if fit is not None and fit not in FAMILIES:

@@ -201,7 +201,9 @@ class _Room:
         widest = max(0.45 * self.scale[0], 76.0) * 25.4 / 72.0
         for i in sorted(range(len(wanted)), key=lambda i: wanted[i][0].size > 1):
             _, _, text, color = wanted[i]
-            broken = "\n".join(wrapped(line, widest, SMALL) for line in tied(text).split("\n"))
+            held = tied(text)
+            room = max(widest, *(text_width(word, SMALL) + 0.1 for word in held.replace("\n", " ").split(" ")))
+            broken = "\n".join(wrapped(line, room, SMALL) for line in held.split("\n"))
             made = self.ax.annotate(
                 broken, (0.5, 0.5), xytext=(0.5, 0.5), xycoords="axes fraction", textcoords="axes fraction", size=SMALL,
                 color=color, ha="left", va="bottom", linespacing=1.1, zorder=6, gid="label",

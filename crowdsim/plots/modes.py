@@ -38,7 +38,7 @@ def modes(case: Case, *, mode: str | None = None, width: float = WIDTH, foot: st
     columns = min(most, len(chosen)) if len(chosen) != 4 else min(most, 2)
     rows = math.ceil(len(chosen) / columns)
     mass = ", the people's mass included" if case.people == "mass" else ""
-    title = f"Mode shapes as simulated with their modal masses{mass}; circles: points of record"
+    title = f"Mode shapes as simulated{mass}; circles: points of record"
     fig = figure(width, max(rows * (42.0 if rows > 1 else 56.0), 52.0), title, foot)
     panels = fig.subplots(rows, columns, sharex=True, squeeze=False)
     labels = []

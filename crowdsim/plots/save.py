@@ -12,6 +12,7 @@ from crowdsim.errors import ResultsError
 from crowdsim.plots.style import home
 
 ENDINGS = ("png", "svg", "pdf")
+NARROWEST, WIDEST = 60.0, 400.0  # mm
 
 
 def check_place(place: Path) -> None:
@@ -22,6 +23,12 @@ def check_place(place: Path) -> None:
         raise ResultsError(f"{place}: is a folder; --out takes the name of a file")
     if not place.parent.is_dir():
         raise ResultsError(f"{place}: there is no folder {place.parent}; make it first")
+
+
+def check_width(width: float) -> None:
+    """Raises ResultsError for a width [mm] at which no figure can be read."""
+    if not NARROWEST <= width <= WIDEST:
+        raise ResultsError(f"width {width:g} mm: {NARROWEST:g} to {WIDEST:g} mm are possible")
 
 
 def save(ax: Axes, place: Path, title: str) -> None:

@@ -10,7 +10,7 @@ from matplotlib.axes import Axes
 from matplotlib.patheffects import withStroke
 from matplotlib.ticker import MaxNLocator
 
-from crowdsim.errors import ResultsError
+from crowdsim.plots.save import check_place, check_width, save
 from crowdsim.plots.style import (
     BAND,
     BLACK,
@@ -70,17 +70,11 @@ def draw_sensitivity(result: Sensitivity, out: str | Path, *, width: float = WID
 
     Raises ResultsError where that cannot be done; nothing half written stays behind.
     """
-    from crowdsim.plots.draw import ENDINGS, _save
-
     place = Path(out)
-    if place.suffix.lower().removeprefix(".") not in ENDINGS:
-        raise ResultsError(f"{place}: a figure ends in .png, .svg or .pdf")
-    if place.is_dir():
-        raise ResultsError(f"{place}: is a folder; --out takes the name of a file")
-    if not place.parent.is_dir():
-        raise ResultsError(f"{place}: there is no folder {place.parent}; make it first")
+    check_place(place)
+    check_width(width)
     with styled():
-        _save(sensitivity(result, width=width), place, f"{result.title}, {result.case}: sensitivity")
+        save(sensitivity(result, width=width), place, f"{result.title}, {result.case}: sensitivity")
     return place
 
 

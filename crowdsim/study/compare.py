@@ -87,7 +87,7 @@ def _crossing(method: Method) -> float:
 MARKED = {
     STEADY: "steady state",
     CROSSING: "one crossing",
-    SQUARE_ROOT: "crossing x sqrt(number)",
+    SQUARE_ROOT: "one crossing × √number",
     NARROW_PEAK: "random stream",
 }
 

@@ -93,7 +93,7 @@ def test_imports_point_down_the_path(rooms: tuple[str, ...], forbidden: tuple[st
     ("room_of", "shared"),
     [
         ("guides", {"criterion", "catalogue"}),
-        ("plots", {"style", "labels", "strip", "draw"}),
+        ("plots", {"style", "labels", "strip", "save", "draw"}),
         ("console", {"base", "formulas", "verdicts", "screening", "summary", "fits"}),
     ],
 )

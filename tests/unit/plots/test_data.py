@@ -198,7 +198,7 @@ def test_many_windows_stay_a_small_line_with_its_tail_whole(read: dict[str, Resu
     for a in np.linspace(0.3, 1.0, 50):
         # between two steps drawn lie 40,000/1500 = 27 peaks, 0.07 %
         shown = y[np.searchsorted(x, a, side="right") - 1]
-        assert 0.0 <= shown - np.mean(peaks > a) < 7e-4
+        assert -1e-12 < shown - np.mean(peaks > a) < 7e-4  # below 0 by rounding alone
 
 
 def test_a_record_shorter_than_the_window_is_taken_whole_and_said(read: dict[str, Results]) -> None:

@@ -208,7 +208,7 @@ def imports(path: Path) -> set[str]:
 def test_a_figure_file_imports_no_other_and_no_pyplot(stem: str) -> None:
     seen = imports(FILES[stem])
     inside = {name.removeprefix("crowdsim.plots.") for name in seen if name.startswith("crowdsim.plots")}
-    assert inside <= SHARED | ({"draw"} if stem == "sensitivity" else set())  # which saves itself
+    assert inside <= SHARED
     assert not {name for name in seen if "pyplot" in name}
     assert not {name for name in seen if name.startswith(("crowdsim.console", "crowdsim.cli"))}
 
