@@ -13,11 +13,11 @@ from rich.table import Table
 from crowdsim.results.texts import number
 
 CAUTION = (
-    "Comfort only: this is no safety check of the structure. Lateral lock-in, deliberate jumping and panic are "
-    "outside. Damping is uncertain until it is measured. The governing code, the owner's criteria and a licensed "
-    "engineer decide."
+    "Comfort only, and vertical only: this is no safety check of the structure. Lateral and longitudinal comfort, "
+    "lateral lock-in, deliberate jumping and panic are outside. Damping is uncertain until it is measured. The "
+    "governing code, the owner's criteria and a licensed engineer decide."
 )
-WIDE = 110  # columns; a narrower terminal gets fewer columns, never a cut number
+FOLDED = 16  # letters that a folding column keeps at least
 
 
 class Console:
@@ -29,11 +29,6 @@ class Console:
         self.err = rich.console.Console(stderr=True, highlight=False, markup=False)
         if not self.out.is_terminal:
             self.out.width = 120
-
-    @property
-    def wide(self) -> bool:
-        """Whether there is room for every column."""
-        return self.out.width >= WIDE
 
     def note(self, text: str) -> None:
         """A line on standard error, unless quiet."""
@@ -48,16 +43,32 @@ class Console:
         """Running text, folded to the width."""
         self.out.print(textwrap.fill(text, self.out.width, initial_indent=indent, subsequent_indent=indent))
 
-    def table(self, title: str, columns: Sequence[tuple[str, str]], rows: Sequence[Sequence[str]]) -> None:
-        """Rows under columns (name, "l" folds, "k" keeps, "r" keeps to the right)."""
+    def table(
+        self,
+        title: str,
+        columns: Sequence[tuple[str, str]],
+        rows: Sequence[Sequence[str]],
+        spare: Sequence[str] = (),
+    ) -> None:
+        """Rows under columns (name, "l" folds, "k" keeps, "r" keeps to the right).
+
+        spare : columns that are left out, the first first, where the terminal is too narrow; what stays is whole
+        """
+        keep = list(range(len(columns)))
+        widths = [_least(name, side, [row[i] for row in rows]) for i, (name, side) in enumerate(columns)]
+        for name in spare:
+            if sum(widths[i] + 2 for i in keep) - 2 <= self.out.width:
+                break
+            keep = [i for i in keep if columns[i][0] != name]
         table = Table(title=title, title_justify="left", title_style="bold", box=None, pad_edge=False, padding=(0, 1))
-        for i, (name, side) in enumerate(columns):
-            whole = max([len(name), *(len(row[i]) for row in rows)]) if side != "l" else None
+        for i in keep:
+            name, side = columns[i]
             table.add_column(
-                name, justify="right" if side == "r" else "left", no_wrap=side != "l", min_width=whole, overflow="fold"
-            )
+                name, justify="right" if side == "r" else "left", no_wrap=side != "l", min_width=widths[i],
+                overflow="fold",
+            )  # fmt: skip
         for row in rows:
-            table.add_row(*row)
+            table.add_row(*(row[i] for i in keep))
         self.out.print(table)
 
     def items(self, title: str, lines: Sequence[str]) -> None:
@@ -71,6 +82,12 @@ class Console:
     def data(self, value: Any) -> None:
         """JSON."""
         self.out.file.write(json_module.dumps(value, indent=2, allow_nan=False) + "\n")
+
+
+def _least(name: str, side: str, cells: Sequence[str]) -> int:
+    """Letters that a column needs: all of its longest cell, or what a folding one keeps."""
+    longest = max([len(name), *map(len, cells)])
+    return min(longest, FOLDED) if side == "l" else longest
 
 
 def or_dash(value: float | None, digits: int = 3) -> str:

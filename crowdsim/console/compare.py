@@ -22,6 +22,7 @@ def compare(console: Console, comparison: Comparison) -> None:
     console.heading(said.title)
     console.line()
     verdicts.table(console, said.cases)
+    explained: set[tuple[str, str, int | None]] = set()
     for case in said.cases:
         console.line()
         console.heading(f"Case {case.name}")
@@ -37,10 +38,12 @@ def compare(console: Console, comparison: Comparison) -> None:
             formulas.beside(console, rows, title="Hand formulas beside the simulated numbers")
             console.line(
                 "Simulated: for a peak, that of the whole deck and all modes in one window, as in the table of cases; "
-                "for an rms, its mean over the realisations where the mode moves most. Other modes: --json."
+                "for an rms, that over all realisations where the mode moves most. Other modes: --json."
             )
-        if case is said.cases[0]:  # alike in the others
+        kind = {(r.method.name, r.method.mode, r.method.harmonic) for r in rows}
+        if not kind <= explained:  # what was said of another case holds here too
             console.items("What they stand for, and why they differ", formulas.reasons(rows))
+            explained |= kind
     if comparison.fits:
         console.line()
         fits(console, comparison.fits)
@@ -64,15 +67,15 @@ def _points(console: Console, case: CaseSummary) -> None:
              "-" if w is None else interval_text(w.low, w.high)]
         )  # fmt: skip
     share = f"{100 * judged.value.share:g} %" if judged else "95 %"
-    columns = [*place, (f"95 % in {record}", "r"), ("interval", "r"), (f"{share} in {window}", "r"), ("interval", "r")]
-    if not console.wide:
-        keep = (0, 1, 2, 6, 7)
-        columns, rows = [columns[i] for i in keep], [[row[i] for i in keep] for row in rows]
-    console.table("Peaks where each mode moves most, m/s2", columns, rows)
+    columns = [*place, (f"95 % in {record}", "r"), ("its interval", "r"), (f"{share} in {window}", "r"),
+               ("interval", "r")]  # fmt: skip
+    spare = ("direction", "e, m", "its interval", columns[4][0])
+    console.table("Peaks where each mode moves most, m/s2", columns, rows, spare)
     if judged is not None and judged.limit is not None:
         rows = [[*_place(p), _chance(p.exceedance), _chance(p.window_exceedance)] for p in case.points]
         columns = [*place, (f"in {record}", "r"), (f"in {window}", "r")]
-        console.table(f"Chance of a peak above {number(judged.limit)} m/s2 there", columns, rows)
+        title = f"Chance of a peak above {number(judged.limit)} m/s2 there"
+        console.table(title, columns, rows, spare=("direction", "e, m", "s, m"))
 
 
 def _place(point: PointSummary) -> list[str]:

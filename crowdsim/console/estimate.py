@@ -26,7 +26,7 @@ def estimate(console: Console, estimates: Estimates) -> None:
         )
         formulas(console, estimates.of(now.name))
     console.line()
-    console.items(f"What they stand for (numbers of case {estimates.situations[0].name})", meanings(estimates.methods))
+    console.items("What they stand for, each at its first use", meanings(estimates.methods))
     console.line(
         "Hand formulas stand for what their line says, no more; a simulation of the case is beside them in "
         "crowdsim simulate and crowdsim compare."

@@ -37,10 +37,7 @@ def formulas(console: Console, methods: Sequence[Method]) -> None:
     ]
     columns = [("mode", "k"), ("harmonic", "k"), ("who", "l"), ("formula", "k"), ("measure", "k"), ("value", "r"),
                ("unit", "k")]  # fmt: skip
-    if not console.wide:
-        keep = (0, 1, 3, 5, 6)
-        columns, rows = [columns[i] for i in keep], [[row[i] for i in keep] for row in rows]
-    console.table("Hand formulas", columns, rows)
+    console.table("Hand formulas", columns, rows, spare=("who", "measure", "harmonic"))
     nothing: dict[str, list[str]] = {}
     for m in methods:
         if m.value is None:
@@ -53,7 +50,7 @@ def meanings(methods: Sequence[Method]) -> list[str]:
     seen: dict[str, str] = {}
     for m in methods:
         if m.value is not None:
-            text = f"{m.name} ({m.mode}): {m.stands_for}; {m.assumes}. Source: {m.source}"
+            text = f"{m.name} ({m.case}, mode {m.mode}): {m.stands_for}; {m.assumes}. Source: {m.source}"
             seen.setdefault(m.name, text)
     return list(seen.values())
 
@@ -66,11 +63,9 @@ def beside(console: Console, rows: Sequence[Compared], *, title: str) -> None:
         for r in rows
         if r.method.value is not None
     ]  # fmt: skip
-    columns = [("formula", "k"), ("mode", "k"), ("harmonic", "k"), ("gives, m/s2", "r"), ("simulated", "r"),
+    columns = [("formula", "l"), ("mode", "k"), ("harmonic", "k"), ("gives, m/s2", "r"), ("simulated", "r"),
                ("ratio", "r"), ("its 95 % interval", "r")]  # fmt: skip
-    if not console.wide:
-        columns, cells = columns[:2] + columns[3:6], [row[:2] + row[3:6] for row in cells]
-    console.table(title, columns, cells)
+    console.table(title, columns, cells, spare=("its 95 % interval", "harmonic", "mode"))
 
 
 def reasons(rows: Sequence[Compared]) -> list[str]:

@@ -73,7 +73,10 @@ class RunProgress(Progress):
         value = self.peaks[percentile_rank(done, 0.95) - 1]
         rate = done / max(now - self._begun, 1e-9)
         self.bar.update(
-            self.task, completed=done, rate=f"{rate:.3g} a second", value=f"95 % value so far {number(value)} m/s2"
+            self.task,
+            completed=done,
+            rate=f"{rate:.3g} a second",
+            value=f"95 % of whole records so far {number(value)} m/s2",
         )
 
     def case_done(self) -> None:

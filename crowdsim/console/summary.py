@@ -100,13 +100,10 @@ def points(console: Console, case: CaseSummary) -> None:
              number(p.median), number(p.p95.value), interval_text(p.p95.low, p.p95.high), number(p.largest),
              number(point.rms.mean), number(point.running_rms_max.p95.value)]
         )  # fmt: skip
-    columns = [("at", "l"), ("s, m", "r"), ("e, m", "r"), ("direction", "k"), ("mean", "r"), ("sd", "r"),
+    columns = [("at", "k"), ("s, m", "r"), ("e, m", "r"), ("direction", "k"), ("mean", "r"), ("sd", "r"),
                ("median", "r"), ("95 % value", "r"), ("its 95 % interval", "r"), ("largest", "r"),
                ("RMS, mean", "r"), ("1 s RMS, 95 %", "r")]  # fmt: skip
-    if not console.wide:
-        keep = [i for i, (name, _) in enumerate(columns) if name not in ("sd", "median", "RMS, mean", "1 s RMS, 95 %")]
-        columns, rows = [columns[i] for i in keep], [[row[i] for i in keep] for row in rows]
     console.table(
         f"Peak acceleration of all modes together in {span(case.duration)}, m/s2, where each mode moves most",
-        columns, rows,
+        columns, rows, spare=("median", "sd", "1 s RMS, 95 %", "RMS, mean", "mean", "direction", "largest", "e, m"),
     )  # fmt: skip

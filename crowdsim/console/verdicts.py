@@ -5,19 +5,21 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from crowdsim.console.base import Console, interval_text
-from crowdsim.results.judgement import Judgement, buys
+from crowdsim.results.judgement import Judgement
 from crowdsim.results.summary import CaseSummary
 from crowdsim.results.texts import number, percent, span
+from crowdsim.results.wording import buys, class_text
 
 
 def verdict(console: Console, judged: Judgement) -> None:
     """The sentence for a report, the chances, what would decide."""
     console.line(judged.sentence, "  ")
     if judged.chances:
-        parts = [
+        seen = [i for i, (_, p) in enumerate(judged.chances) if p.value > 0.0]
+        parts = [  # and the next worse one: not seen is not impossible
             f"{name} {percent(p.value)} ({percent(p.low)} to {percent(p.high)})"
-            for name, p in judged.chances
-            if p.value > 0.0 or name == judged.class_name
+            for i, (name, p) in enumerate(judged.chances)
+            if i in seen or i == max(seen) + 1
         ]
         console.line(f"The peak of one window of {span(judged.window)} lies in {', '.join(parts)}.")
     if judged.exceedance is not None:
@@ -39,17 +41,17 @@ def table(console: Console, cases: Sequence[CaseSummary]) -> None:
                 continue
             rows.append([
                 case.name, judged.direction, number(case.persons_on_deck), span(judged.window),
-                number(judged.value.value), interval_text(judged.value.low, judged.value.high),
-                judged.class_name or "-", chances_text(judged), asked_text(judged), verdict_text(judged),
+                judged.shown, interval_text(judged.value.low, judged.value.high),
+                class_text(judged), chances_text(judged), asked_text(judged), verdict_text(judged),
             ])  # fmt: skip
     share = f"{100 * next(d.judgement.value.share for c in cases for d in c.deck if d.judgement):g} %" if rows else ""
+    windows = {row[3] for row in rows}
+    time = f"window of {windows.pop()}" if len(windows) == 1 else "window"
     columns = [("case", "l"), ("direction", "k"), ("persons", "r"), ("window", "r"), (f"{share} peak, m/s2", "r"),
                ("its 95 % interval", "r"), ("class", "k"), ("chance of each class", "l"), ("asked", "l"),
                ("verdict", "l")]  # fmt: skip
-    if not console.wide:
-        keep = (0, 4, 5, 6, 8, 9)
-        columns, rows = [columns[i] for i in keep], [[row[i] for i in keep] for row in rows]
-    console.table("Cases: largest peak anywhere on the deck in one window", columns, rows)
+    spare = ("direction", *(("window",) if len(windows) == 0 else ()), "chance of each class", "persons")
+    console.table(f"Cases: largest peak anywhere on the deck in one {time}", columns, rows, spare)
 
 
 def chances_text(judged: Judgement) -> str:
@@ -68,4 +70,4 @@ def verdict_text(judged: Judgement) -> str:
     """The verdict in short."""
     if judged.verdict is None:
         return "-"
-    return f"undecided, about {judged.needed:,} would" if judged.needed is not None else judged.verdict
+    return f"undecided (about {judged.needed:,} may)" if judged.needed is not None else judged.verdict

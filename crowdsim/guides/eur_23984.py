@@ -6,7 +6,7 @@ from crowdsim.guides.criterion import Band, Criterion
 
 _VERTICAL = (
     Band(1.25, 2.3, 1, "critical range"),
-    Band(2.5, 4.6, 2, "second harmonic, where it could matter"),
+    Band(2.3, 4.6, 2, "extended range, where the second harmonic could matter"),
 )
 
 EUR_23984 = Criterion(

@@ -98,3 +98,24 @@ def describe(values: Floats) -> Distribution1D:
         p95=percentile(values),
         largest=float(np.max(values)),
     )
+
+
+@dataclass(frozen=True)
+class MeanSquare:
+    """Root of the mean square over all realisations and its 95 % interval, None for a single one."""
+
+    value: float
+    low: float | None
+    high: float | None
+
+
+def root_mean_square(rms: Floats) -> MeanSquare:
+    """The rms of all realisations together from the rms of each; interval by Student's distribution of the squares."""
+    square = np.asarray(rms, dtype=np.float64) ** 2
+    mean, count = float(np.mean(square)), square.size
+    if count < 2:
+        return MeanSquare(math.sqrt(mean), None, None)
+    from scipy.special import stdtrit
+
+    half = float(stdtrit(count - 1, 0.975)) * float(np.std(square, ddof=1)) / math.sqrt(count)
+    return MeanSquare(math.sqrt(mean), math.sqrt(max(mean - half, 0.0)), math.sqrt(mean + half))

@@ -29,11 +29,13 @@ class FittedQuantile:
 class FittedCase:
     """The law of one case and direction; `trouble` says why there is none.
 
-    text : parameters with standard errors; p_value : of the Anderson-Darling test, by parametric bootstrap
+    window : that the peaks belong to [s]; text : parameters with standard errors
+    p_value : of the Anderson-Darling test, by parametric bootstrap
     """
 
     case: str
     direction: str
+    window: float
     family: str
     text: str
     upper_end: float | None
@@ -55,13 +57,15 @@ def _fit(group: Any, direction: str, family: Family) -> FittedCase:
     name = str(group.attrs["name"])
     deck = group["deck"][direction]
     peaks = deck["window_peak"][()]
+    window = float(group.attrs["window"])
     if peaks.shape[1] == 0:  # no window fits: the whole record
+        window = float(group.attrs["duration"])
         peaks = deck["peak_envelope"][()].max(axis=(1, 2))[:, None]
     try:
         law = fit(peaks, family)
         test = goodness(law, peaks)
     except ValueError as error:
-        return FittedCase(name, direction, family, "", None, None, None, None, (), str(error))
+        return FittedCase(name, direction, window, family, "", None, None, None, None, (), str(error))
     quantiles = []
     for share in SHARES:
         low, high = law.quantile_interval(share)
@@ -76,7 +80,7 @@ def _fit(group: Any, direction: str, family: Family) -> FittedCase:
             )
         )
     return FittedCase(
-        case=name, direction=direction, family=family, text=law.text(),
+        case=name, direction=direction, window=window, family=family, text=law.text(),
         upper_end=law.upper_end if law.upper_end < float("inf") else None,
         statistic=test.statistic, p_value=test.p_value, correlation=test.correlation, quantiles=tuple(quantiles),
         trouble="",

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -10,16 +10,11 @@ from numpy.typing import NDArray
 
 from crowdsim.guides.catalogue import CRITERIA
 from crowdsim.guides.criterion import Criterion
-from crowdsim.response.statistics import Percentile, least_for_interval, percentile_rank
-from crowdsim.response.verdict import (
-    Verdict,
-    realisations_for_width,
-    realisations_to_decide,
-    relative_half_width,
-    verdict,
-)
+from crowdsim.response.statistics import Percentile
+from crowdsim.response.verdict import Verdict, realisations_for_width, realisations_to_decide, verdict
 from crowdsim.response.windows import Proportion, window_exceedance, window_percentile, window_share
-from crowdsim.results.texts import number, percent, span
+from crowdsim.results import wording
+from crowdsim.results.texts import apart
 
 Floats = NDArray[np.float64]
 CLASS_SHARE = 0.95  # the percentile of the peak whose class is the case's
@@ -53,7 +48,10 @@ class Judgement:
 
     value : 95 % value of the peak in `window` [s], m/s2; `whole`: the window is the whole record
     short : no whole window fits the record, which is judged instead: a peak can only be higher
-    class_name : of the criterion, None where the source has none for this direction
+    asked_window : the comfort window of the case; rest : of each record in no window [s]
+    shown : the value in as many digits as keep it apart from bounds
+    class_name : of the criterion, None where the source has none for this direction; class_low and
+    class_high : those of the interval's ends
     chances : share of windows whose peak lies in each class; exceedance: of the limit
     needed : realisations that would decide; wanted : those for an interval of +-3 %
     """
@@ -65,10 +63,15 @@ class Judgement:
     window: float
     whole: bool
     short: bool
+    asked_window: float
+    rest: float
     value: Percentile
+    shown: str
     criterion: str
     class_name: str | None
     class_words: str
+    class_low: str | None
+    class_high: str | None
     chances: tuple[tuple[str, Proportion], ...]
     target: str | None
     limit: float | None
@@ -120,29 +123,25 @@ def judge(
     count = peaks.shape[0]
     exceedance = None if wants.limit is None else window_exceedance(peaks, wants.limit)
     says, needed = _verdict(value, wants.limit, exceedance, count, short)
-    name = wants.criterion.classify(value.value, direction) if value.share == CLASS_SHARE else None
-    notes = _notes(wants, direction, short, duration, window, exceedance, value, says, needed, count)
-    common: dict[str, Any] = {
-        "case": str(attributes["name"]), "direction": direction, "realisations": count, "windows": peaks.shape[1],
-        "window": duration if short else window, "whole": short or window >= duration - 1e-9, "short": short,
-    }  # fmt: skip
-    return Judgement(
-        **common,
-        value=value,
-        criterion=wants.criterion.title,
-        class_name=name,
-        class_words=wants.criterion.words[wants.criterion.classes.index(name)] if name else "",
-        chances=chances(wants.criterion, direction, peaks),
-        target=wants.target,
-        limit=wants.limit,
-        limit_words=wants.words,
-        exceedance=exceedance,
-        verdict=says,
-        needed=needed,
-        wanted=realisations_for_width(value, count, 0.03),
-        note="; ".join(notes),
-        sentence=_sentence(common, value, name, wants, says, needed),
+    criterion = wants.criterion
+    judged = value.share == CLASS_SHARE
+    name = criterion.classify(value.value, direction) if judged else None
+    low, high = (
+        criterion.classify(end, direction) if judged and end is not None else None for end in (value.low, value.high)
     )
+    bounds = (*criterion.bounds.get(direction, ()), *(() if wants.limit is None else (wants.limit,)))
+    found = Judgement(
+        case=str(attributes["name"]), direction=direction, realisations=count, windows=peaks.shape[1],
+        window=duration if short else window, whole=short or window >= duration - 1e-9, short=short,
+        asked_window=window, rest=0.0 if short else max(0.0, duration - peaks.shape[1] * window),
+        value=value, shown=apart(value.value, bounds),
+        criterion=criterion.title, class_name=name,
+        class_words=criterion.words[criterion.classes.index(name)] if name else "", class_low=low, class_high=high,
+        chances=chances(criterion, direction, peaks), target=wants.target, limit=wants.limit,
+        limit_words=wants.words, exceedance=exceedance, verdict=says, needed=needed,
+        wanted=realisations_for_width(value, count, 0.03), note="", sentence="",
+    )  # fmt: skip
+    return replace(found, note=wording.note(found, criterion), sentence=wording.sentence(found))
 
 
 def chances(criterion: Criterion, direction: str, peaks: Floats) -> tuple[tuple[str, Proportion], ...]:
@@ -167,74 +166,3 @@ def _verdict(
     if says != "undecided":
         return says, None
     return says, None if short else realisations_to_decide(exceedance, count, value.share)
-
-
-def _notes(
-    wants: Asked, direction: str, short: bool, duration: float, window: float, exceedance: Proportion | None,
-    value: Percentile, says: Verdict | None, needed: int | None, count: int,
-) -> list[str]:  # fmt: skip
-    notes = []
-    if short:
-        notes.append(
-            f"the record of {span(duration)} is shorter than the comfort window of {span(window)}, in which peaks can "
-            f"only be higher: make duration at least {number(window)} s"
-        )
-    if direction not in wants.criterion.bounds:
-        notes.append(f"{wants.criterion.title} has nothing to say of the {direction} direction")
-    elif direction in wants.criterion.notes:
-        notes.append(f"{wants.criterion.title}: {wants.criterion.notes[direction]}")
-    least = least_for_interval(value.share)
-    if count < least:
-        notes.append(f"no interval of the {100 * value.share:g} % value, hence no verdict, below {least} realisations")
-    if value.share != CLASS_SHARE and direction in wants.criterion.bounds and wants.criterion.classes:
-        notes.append(f"a class goes with the {100 * CLASS_SHARE:g} % value")
-    if says == "undecided" and not short and exceedance is not None:
-        above, near = percent(exceedance.value), percent(1.0 - value.share)
-        notes.append(
-            f"about {needed:,} realisations would decide, if {above} of the windows stay above the limit"
-            if needed is not None
-            else f"{above} of the windows are above the limit: so near {near} that no number in reach would decide"
-        )
-    return notes
-
-
-def _sentence(
-    common: dict[str, Any], value: Percentile, name: str | None, wants: Asked, says: Verdict | None, needed: int | None
-) -> str:
-    """Ready to paste: percentile, window, case, value, interval, class, limit, verdict."""
-    count = common["realisations"] * common["windows"]
-    many = percentile_rank(count, value.share) < count
-    number_of = f"{common['realisations']:,} simulated realisation{'s' if common['realisations'] != 1 else ''}"
-    if common["windows"] > 1:
-        number_of += f" of {common['windows']} windows each"
-    interval = (
-        f"95 % confidence interval {number(value.low)} to {number(value.high)} m/s2"
-        if value.low is not None and value.high is not None
-        else "no confidence interval"
-    )
-    what = f"{100 * value.share:g} % value of the" if many else "largest"
-    text = (
-        f"{common['case']}: the {what} peak {common['direction']} acceleration anywhere on the deck in "
-        f"{span(common['window'])} is {number(value.value)} m/s2 ({interval}, from {number_of})"
-    )
-    if name:
-        text += f", {'class ' if name.startswith('CL') else ''}{name} of {wants.criterion.title}"
-    if says is None:
-        return text + "."
-    state = {"met": "is met", "not met": "is not met"}.get(says, "is neither shown to be met nor to be exceeded")
-    text += f"; the limit of {number(wants.limit or 0.0)} m/s2 ({wants.words}) {state}"
-    if needed is not None:
-        text += f" (about {needed:,} realisations would decide)"
-    return text + "."
-
-
-def buys(judgement: Judgement) -> str:
-    """What more realisations would buy, as a sentence."""
-    half = relative_half_width(judgement.value)
-    if half is None:
-        return f"{least_for_interval(judgement.value.share)} realisations give a first interval."
-    share = f"{100 * judgement.value.share:g} %"
-    text = f"{judgement.realisations:,} realisations give +-{100 * half:.2g} % on the {share} value"
-    if half <= 0.03 or judgement.wanted is None:
-        return text + "."
-    return f"{text}; +-3 % needs about {judgement.wanted:,}."

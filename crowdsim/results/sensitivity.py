@@ -16,7 +16,7 @@ import numpy as np
 
 from crowdsim.errors import ResultsError
 from crowdsim.results.reader import _strings, open_file
-from crowdsim.results.texts import number
+from crowdsim.results.texts import number, span
 from crowdsim.results.writer import _numbers, _text
 
 GROUP = "sensitivity"
@@ -102,11 +102,15 @@ class Sensitivity:
         heavy = [s for s, r in reached.items() if max(map(abs, r)) > small] or list(reached)[:1]
         light = [s for s in reached if s not in heavy]
         text = (
-            f"The 95 % peak of {self.case}, {number(self.base.value)} m/s2, most depends on: "
+            f"The 95 % peak of {self.case} in {span(self.window)}, {number(self.base.value)} m/s2 from "
+            f"{self.realisations:,} realisations, most depends on: "
             f"{', '.join(f'{s} ({span_of_change(reached[s])})' for s in heavy)}."
         )
         if light:
-            text += f" Less than by chance: {', '.join(f'{s} ({span_of_change(reached[s])})' for s in light)}."
+            text += (
+                " Smaller than what chance leaves in it: "
+                f"{', '.join(f'{s} ({span_of_change(reached[s])})' for s in light)}."
+            )
         if band is not None:
             text += f" Chance leaves {span_of_change(band)}, all that more realisations could remove."
         return text

@@ -10,7 +10,14 @@ from typing import Any
 import h5py
 import numpy as np
 
-from crowdsim.response.statistics import Distribution1D, Percentile, describe, percentile_rank
+from crowdsim.response.statistics import (
+    Distribution1D,
+    MeanSquare,
+    Percentile,
+    describe,
+    percentile_rank,
+    root_mean_square,
+)
 from crowdsim.response.windows import Proportion, window_exceedance, window_percentile
 from crowdsim.results.judgement import LOADED, Judgement, Question, asked, judge
 from crowdsim.results.reader import _strings, open_file
@@ -22,7 +29,8 @@ _SLAB = 2_000_000  # numbers of the envelope in memory at a time
 class PointSummary:
     """Response at one recorded point.
 
-    peak, rms, running_rms_max : over the whole record; window_peak: in a comfort window
+    peak, rms, running_rms_max : over the whole record; rms_of_all: over all records together
+    window_peak : in a comfort window
     exceedance, window_exceedance : of the limit that the case asks for, None without one
     """
 
@@ -32,6 +40,7 @@ class PointSummary:
     direction: str
     peak: Distribution1D
     rms: Distribution1D
+    rms_of_all: MeanSquare
     running_rms_max: Distribution1D
     window_peak: Percentile | None
     exceedance: Proportion | None
@@ -142,6 +151,7 @@ def _point(group: Any, question: Question, i: int, name: str, direction: str) ->
         direction=direction,
         peak=describe(peak),
         rms=describe(rows["rms"][:, i]),
+        rms_of_all=root_mean_square(rows["rms"][:, i]),
         running_rms_max=describe(rows["running_rms_max"][:, i]),
         window_peak=window_percentile(windows, question.percentile) if windows.size else None,
         exceedance=None if limit is None else window_exceedance(peak, limit),

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from math import floor, log10
 
 
@@ -39,11 +40,24 @@ def percent(share: float) -> str:
 def span(seconds: float) -> str:
     """A duration as a person says it.
 
-    >>> span(75.0), span(240.0), span(7200.0)
-    ('75 s', '4 min', '2 h')
+    >>> span(75.0), span(100.0), span(240.0), span(7200.0)
+    ('75 s', '100 s', '4 min', '2 h')
     """
-    if seconds < 90.0:
+    if seconds < 90.0 or (seconds < 600.0 and seconds % 60.0):
         return f"{seconds:.3g} s"
     if seconds < 5400.0:
         return f"{seconds / 60:.3g} min"
     return f"{seconds / 3600:.3g} h"
+
+
+def apart(value: float, others: Iterable[float]) -> str:
+    """A number with as many digits, three to six, as keep it apart from others that it is not.
+
+    >>> apart(0.49996, [0.5, 1.0]), apart(0.4912, [0.5, 1.0]), apart(0.5, [0.5, 1.0])
+    ('0.49996', '0.491', '0.500')
+    """
+    others = [x for x in others if x != value]
+    for digits in range(3, 6):
+        if all(number(value, digits) != number(x, digits) for x in others):
+            return number(value, digits)
+    return number(value, 6)

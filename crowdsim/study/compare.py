@@ -2,19 +2,17 @@
 
 from __future__ import annotations
 
-import math
 from dataclasses import asdict, dataclass, replace
 from pathlib import Path
 from typing import Any
 
 from crowdsim.response.extreme_likelihood import Family
-from crowdsim.response.statistics import Distribution1D
 from crowdsim.results.fits import FittedCase, fit_file
 from crowdsim.results.reader import open_file
 from crowdsim.results.sensitivity import Sensitivity, read_sensitivity
-from crowdsim.results.summary import CaseSummary, Summary, summarise
+from crowdsim.results.summary import CaseSummary, PointSummary, Summary, summarise
 from crowdsim.scenario.reader import Scenario, parse_scenario
-from crowdsim.study.estimate import CROSSING, NARROW_PEAK, PEAK, RMS, SQUARE_ROOT, STEADY, Estimates, Method, estimate
+from crowdsim.study.estimate import CROSSING, PEAK, RMS, SQUARE_ROOT, STEADY, STREAM_PEAK, Estimates, Method, estimate
 from crowdsim.study.situation import Situation
 
 
@@ -22,8 +20,8 @@ from crowdsim.study.situation import Situation
 class Compared:
     """A formula and the simulated number that stands nearest to it, with its 95 % interval.
 
-    simulated : the 95 % value of the peak anywhere on the deck in a comfort window, or the mean rms
-    at the mode's antinode; ratio : formula over simulated; None where one of them is missing
+    simulated : the 95 % value of the peak anywhere on the deck in a comfort window, or the rms
+    over all realisations at the mode's antinode; ratio : formula over simulated; None where one of them is missing
     """
 
     method: Method
@@ -53,16 +51,24 @@ class Comparison:
         return tuple(r for r in self.rows if r.method.case == case)
 
     def leading(self, case: str) -> tuple[Compared, ...]:
-        """Those of the mode for which one crossing is largest, with the harmonic that makes it so."""
+        """Those of the mode at whose antinode the peak is largest, with the harmonic of the largest crossing."""
+        said = next(c for c in self.summary.cases if c.name == case)
+        now = next(s for s in self.estimates.situations if s.name == case)
         here = [r for r in self.of(case) if r.method.value is not None and r.method.measure == PEAK]
-        if not here:
+
+        def largest(mode: str) -> float:
+            point = antinode(now, said, mode, "vertical")
+            return -1.0 if point is None else point.peak.p95.value
+
+        mode = max(dict.fromkeys(r.method.mode for r in here), key=largest, default=None)
+        if mode is None:
             return ()
-        top = max((r.method for r in here if r.method.harmonic), key=_crossing, default=here[0].method)
-        same = (top.harmonic, top.stream)
+        top = max((r.method for r in here if r.method.mode == mode and r.method.harmonic), key=_crossing, default=None)
+        same = (None, "") if top is None else (top.harmonic, top.stream)
         return tuple(
             r
             for r in self.of(case)
-            if (r.method.mode, r.method.direction) == (top.mode, top.direction)
+            if (r.method.mode, r.method.direction) == (mode, "vertical")
             and r.method.measure in (PEAK, RMS)
             and (r.method.harmonic is None or (r.method.harmonic, r.method.stream) == same)
         )
@@ -87,8 +93,8 @@ def _crossing(method: Method) -> float:
 MARKED = {
     STEADY: "steady state",
     CROSSING: "one crossing",
-    SQUARE_ROOT: "one crossing × √number",
-    NARROW_PEAK: "random stream",
+    SQUARE_ROOT: "one crossing x √number",
+    STREAM_PEAK: "random stream",
 }
 
 
@@ -101,9 +107,10 @@ def marks(comparison: Comparison, case: str) -> list[tuple[str, float]]:
     ]
 
 
-def compare(summary: Summary, scenario: Scenario) -> Comparison:
-    """Puts the formulas for `scenario` beside the numbers of a run of it."""
-    estimates = estimate(scenario)
+def compare(summary: Summary, scenario: Scenario, *, percentile: float = 0.95) -> Comparison:
+    """Puts the formulas for `scenario` beside the numbers of a run of it, for the same percentile and time."""
+    judged = {c.name: d.judgement.window for c in summary.cases for d in c.deck if d.judgement is not None}
+    estimates = estimate(scenario, share=percentile, windows=judged)
     by_name = {c.name: c for c in summary.cases}
     now = {s.name: s for s in estimates.situations}
     rows = [_compared(m, now[m.case], by_name[m.case]) for m in estimates.methods if m.case in by_name]
@@ -122,7 +129,9 @@ def compare_file(
     """
     with open_file(path) as file:
         scenario = parse_scenario(str(file.attrs["scenario"]), f"scenario within {path}")
-    comparison = compare(summarise(path, scenario.title, percentile=percentile, limit=limit), scenario)
+    comparison = compare(
+        summarise(path, scenario.title, percentile=percentile, limit=limit), scenario, percentile=percentile
+    )
     fits = () if family is None else fit_file(path, family)
     return replace(comparison, fits=fits, sensitivities=read_sensitivity(path))
 
@@ -145,19 +154,16 @@ def _simulated(method: Method, now: Situation, case: CaseSummary) -> tuple[float
                 value = deck.judgement.value
                 return value.value, value.low, value.high
     if method.measure == RMS:
-        s, e, _ = now.model.largest(now.model.mode(method.mode), method.direction)
-        for point in case.points:
-            near = abs(point.s - s) < 1e-6 * now.model.length and abs(point.e - e) < 1e-9
-            if near and point.direction == method.direction:
-                half = _half_width(point.rms)
-                return point.rms.mean, point.rms.mean - half if half else None, point.rms.mean + half if half else None
+        point = antinode(now, case, method.mode, method.direction)
+        if point is not None:
+            return point.rms_of_all.value, point.rms_of_all.low, point.rms_of_all.high
     return None, None, None
 
 
-def _half_width(values: Distribution1D) -> float | None:
-    """Half the 95 % interval of a mean, by Student's distribution."""
-    if values.sd is None or values.count < 2:
-        return None
-    from scipy.special import stdtrit
-
-    return float(stdtrit(values.count - 1, 0.975)) * values.sd / math.sqrt(values.count)
+def antinode(now: Situation, case: CaseSummary, mode: str, direction: str) -> PointSummary | None:
+    """Where a mode moves most in a direction, among the recorded points."""
+    s, e, _ = now.model.largest(now.model.mode(mode), direction)
+    for point in case.points:
+        if point.direction == direction and abs(point.s - s) < 1e-6 * now.model.length and abs(point.e - e) < 1e-9:
+            return point
+    return None

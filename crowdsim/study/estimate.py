@@ -3,30 +3,42 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator
-from dataclasses import asdict, dataclass
+from collections.abc import Iterator, Mapping
+from dataclasses import asdict, dataclass, replace
 from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
 from crowdsim.bridge.modal import Mode
 from crowdsim.crowd.populations import GRAVITY
 from crowdsim.errors import InputError, Problem
-from crowdsim.guides import narrow_band, resonance, static_deflection
+from crowdsim.guides import narrow_band, random_stream, resonance, static_deflection
 from crowdsim.guides.matsumoto_1978 import multiplier
 from crowdsim.results.texts import number, percent, span
 from crowdsim.scenario.reader import Scenario
-from crowdsim.study.resonances import Resonance, density_on_deck, reach, resonances, stationary
+from crowdsim.study.resonances import (
+    Resonance,
+    densities_on_deck,
+    density_on_deck,
+    reach,
+    resonances,
+    simple_span,
+    stationary,
+)
 from crowdsim.study.screening import Screened, screen
 from crowdsim.study.situation import Situation, Stream, cases, situation
 
+Floats = NDArray[np.float64]
 TEXTBOOK = "textbook; derived and tested here"
 STEADY, CROSSING = "steady state in resonance", "one crossing in resonance, force moving"
 FIXED = "one crossing in resonance, force in one place"
 WEIGHTS = "resonance by weights, C = {}"
 SQUARE_ROOT = "one crossing x square root of the number"
+STREAM_SD, STREAM_PEAK = "random stream, all paces, rms", "random stream, all paces, peak"
 NARROW_SD, NARROW_PEAK = "random stream, narrow band, rms", "random stream, narrow band, peak"
 DEFLECTION = "deflection under own weight"
+FEW_IN_BAND = 0.3  # persons in the half-power band below which a Gaussian peak means nothing
 PEAK, RMS = "peak acceleration", "rms acceleration"
 
 
@@ -76,22 +88,30 @@ class Estimates:
         }
 
 
-def estimate(scenario: Scenario, case: str | None = None) -> Estimates:
-    """The hand formulas of every case, or of the one called `case`. Raises InputError for a case that is none."""
+def estimate(
+    scenario: Scenario, case: str | None = None, *, share: float = 0.95, windows: Mapping[str, float] | None = None
+) -> Estimates:
+    """The hand formulas of every case, or of the one called `case`. Raises InputError for a case that is none.
+
+    share : percentile of the peak that formulas with one are asked for; windows : time of that peak by case [s], in
+    place of the comfort window
+    """
     tables = [t for t in cases(scenario) if case is None or t.name == case]
     if not tables:
         names = ", ".join(t.name for t in cases(scenario))
         raise InputError(scenario.source, [Problem("case", f"no case is called {case!r}", f"cases here: {names}")])
     all_of_them = tuple(situation(scenario, table) for table in tables)
+    if windows is not None:
+        all_of_them = tuple(replace(now, window=windows.get(now.name, now.window)) for now in all_of_them)
     return Estimates(
         title=scenario.title,
         screening=tuple(screen(all_of_them)),
-        methods=tuple(m for now in all_of_them for m in _case(now)),
+        methods=tuple(m for now in all_of_them for m in _case(now, share)),
         situations=all_of_them,
     )
 
 
-def _case(now: Situation) -> Iterator[Method]:
+def _case(now: Situation, share: float) -> Iterator[Method]:
     for mode in now.model.modes:
         for direction in ("lateral", "longitudinal"):
             if direction in mode.directions:
@@ -106,7 +126,7 @@ def _case(now: Situation) -> Iterator[Method]:
             yield from _single(now, one)
         yield from _weights(now, max(found, key=_crossing))
         yield _square_root(now, mode, found)
-        yield from _stream(now, mode)
+        yield from _stream(now, mode, share)
     yield from _deflection(now)
 
 
@@ -148,12 +168,13 @@ def _single(now: Situation, one: Resonance) -> Iterator[Method]:
     )
     near = (
         f"the simulation has {number(now.persons)} persons on the deck on average, of whom "
-        f"{number(one.persons * one.in_band)} at a time have a pace within the half-power band of {mode.name}, and it "
+        f"{number(_in_band(now, mode))} at a time have a pace within the half-power band of {mode.name}, and it "
         f"takes the largest peak of {span(now.window)}"
     )
     yield _method(
         now, mode, STEADY, TEXTBOOK, steady, **who,
-        stands_for="one person at the mode's antinode, stepping there until the motion grows no more",
+        stands_for=f"one person stepping on the line e = {number(one.line)} m where the mode moves it most, until the "
+        "motion grows no more, read where the mode moves most",
         assumes=f"F/(2 zeta M); {force}",
         why=f"95 % of it takes {number(0.477 / mode.damping)} load cycles, a crossing has {number(one.cycles)}; {near}",
     )  # fmt: skip
@@ -177,7 +198,7 @@ def _weights(now: Situation, one: Resonance) -> Iterator[Method]:
     """a/g = C alpha Wp/(2 zeta W) with three meanings of C."""
     mode = one.mode
     who = {"stream": one.who, "harmonic": one.harmonic}
-    modal = mode.modal_mass * GRAVITY / one.top**2
+    modal = mode.modal_mass * GRAVITY / (one.path * one.top)
 
     def by(constant: float, walkers: float, structure: float) -> float:
         return GRAVITY * resonance.weight_form(constant, one.load_factor, walkers, mode.damping, structure)
@@ -185,8 +206,8 @@ def _weights(now: Situation, one: Resonance) -> Iterator[Method]:
     yield _method(
         now, mode, WEIGHTS.format("1"), TEXTBOOK, by(resonance.MODAL_WEIGHT, one.weight, modal), **who,
         stands_for="the steady state in weights",
-        assumes=f"W is the mode's weight M g/phi^2 = {number(modal / 1e3)} kN, one person of {number(one.weight)} N at "
-        "the antinode",
+        assumes=f"W is the mode's weight M g over the ordinates of force and reading, {number(modal / 1e3)} kN; one "
+        f"person of {number(one.weight)} N",
         why="as the steady state",
     )  # fmt: skip
     if not one.simple:
@@ -243,40 +264,88 @@ def _square_root(now: Situation, mode: Mode, found: list[Resonance]) -> Method:
     )  # fmt: skip
 
 
-def _stream(now: Situation, mode: Mode) -> Iterator[Method]:
-    """The stationary random stream on a narrow band: rms and the 95 % peak in the comfort window."""
+def _stream(now: Situation, mode: Mode, share: float) -> Iterator[Method]:
+    """The stationary random stream: every pace with its own response, and the narrow band; rms and peak."""
     source = "random vibration, textbook; paces weighted by the time on the deck"
     peak_source = f"{source}; peak factor of Vanmarcke 1975, from memory"
+    kinds = ((STREAM_SD, STREAM_PEAK), (NARROW_SD, NARROW_PEAK))
     reason = ""
     if not stationary(now):
         reason = "the arrivals are given: nothing is stationary"
     elif any(s.walkers.pace.kind == "fixed" for s in now.streams):
-        reason = "a fixed pace has no band: everybody is in resonance, or nobody"
+        reason = "with a fixed pace a crossing, not the pace, says how much of the resonance is reached"
     if reason:
-        yield _method(now, mode, NARROW_SD, source, None, measure=RMS, note=reason)
-        yield _method(now, mode, NARROW_PEAK, peak_source, None, note=reason)
+        for rms_name, peak_name in kinds:
+            yield _method(now, mode, rms_name, source, None, measure=RMS, note=reason)
+            yield _method(now, mode, peak_name, peak_source, None, note=reason)
         return
-    density = sum(force_density(now, mode, stream) for stream in now.streams)
     top = abs(now.model.largest(mode, "vertical")[2])
-    sd = narrow_band.standard_deviation(density, mode.frequency, mode.damping, mode.modal_mass, top)
-    factor = narrow_band.vanmarcke(0.95, mode.frequency, mode.damping, now.window)
-    assumes = (
-        f"modal force of {number(density)} N2/Hz at {number(mode.frequency, 4)} Hz, flat over the mode's band; a "
-        "stream without end, phases at random"
+    density = sum(force_density(now, mode, stream) for stream in now.streams)
+    narrow = narrow_band.standard_deviation(density, mode.frequency, mode.damping, mode.modal_mass, top)
+    whole = top * math.sqrt(sum(_variance(now, mode, stream) for stream in now.streams))
+    assumed = (
+        "each pace with its own response to its harmonics",
+        f"modal force of {number(density)} N2/Hz at {number(mode.frequency, 4)} Hz, flat over the mode's band",
     )
-    yield _method(
-        now, mode, NARROW_SD, source, sd, measure=RMS,
-        stands_for=f"rms over time of mode {mode.name} alone at its antinode, all streams together", assumes=assumes,
-        why="other modes; the force of a walker grows and fades; and where few paces lie on the mode's frequency, the "
-        "many beside it count for more than the band holds",
-    )  # fmt: skip
-    yield _method(
-        now, mode, NARROW_PEAK, peak_source, factor * sd,
-        stands_for=f"95 % value of the peak of mode {mode.name} alone in {span(now.window)}",
+    differs = (
+        "other modes, and the force of a walker, which grows and fades",
+        "as the line above, and where the density of paces is not flat near the mode's frequency it can be far off",
+    )
+    for (rms_name, peak_name), sd, assumes, why in zip(kinds, (whole, narrow), assumed, differs, strict=True):
+        assumes += "; a stream without end, phases at random"
+        yield _method(
+            now, mode, rms_name, source, sd or None, measure=RMS,
+            stands_for=f"rms over time of mode {mode.name} alone at its antinode, all streams together",
+            assumes=assumes, why=why, note="" if sd else "nobody walks at exactly this pace",
+        )  # fmt: skip
+        yield _peak(now, mode, peak_name, peak_source, sd, share, assumes)
+
+
+def _peak(now: Situation, mode: Mode, name: str, source: str, sd: float, share: float, assumes: str) -> Method:
+    """The percentile of the peak of a stationary Gaussian response, where that means anything."""
+    near = _in_band(now, mode)
+    if near < FEW_IN_BAND or not sd:
+        note = (
+            f"{number(near)} persons are in the half-power band of {mode.name} at a time: the response comes in "
+            f"bursts, and a Gaussian peak (below {FEW_IN_BAND:g} persons) would be far too low"
+        )
+        return _method(now, mode, name, source, None, note=note)
+    factor = narrow_band.vanmarcke(share, mode.frequency, mode.damping, now.window)
+    return _method(
+        now, mode, name, source, factor * sd,
+        stands_for=f"{100 * share:g} % value of the peak of mode {mode.name} alone in {span(now.window)}",
         assumes=f"{assumes}; Gaussian, peak factor {number(factor)}",
-        why=f"{number(_in_band(now, mode))} persons are in the half-power band at a time: the fewer, the more the "
-        "response comes in bursts and the higher its peaks are above the Gaussian ones; other modes add",
+        why=f"{number(near)} persons are in the half-power band at a time: the fewer, the more the response comes in "
+        "bursts and the higher its peaks are above the Gaussian ones; other modes add",
     )  # fmt: skip
+
+
+def _variance(now: Situation, mode: Mode, stream: Stream) -> float:
+    """Of the modal acceleration under one stream [m2/s4], every pace with its own response."""
+    pace = stream.walkers.pace
+    low, high = (float(pace.quantile(p)) for p in (1e-9, 1.0 - 1e-9))
+    total = 0.0
+    for k in range(1, stream.load.harmonics + 1):
+        x = random_stream.paces(low, high, k, mode.frequency, mode.damping)
+        total += random_stream.variance(
+            stream.persons, _mean_square(now, mode, stream), x, densities_on_deck(stream, x),
+            _force_square(stream, x, k), k, mode.frequency, mode.damping, mode.modal_mass,
+        )  # fmt: skip
+    return total
+
+
+def _mean_square(now: Situation, mode: Mode, stream: Stream) -> float:
+    """Of the vertical ordinates where the stream walks."""
+    x, w = stream.walkers.offset.nodes
+    return now.model.mean_square(mode, math.fsum(w * x), math.fsum(w * x * x), ("vertical",))
+
+
+def _force_square(stream: Stream, pace: Floats, harmonic: int) -> Floats:
+    """E[F^2] [N2] of a harmonic at each pace, over weights and scattered factors."""
+    factors = stream.load.factors(pace)[:, harmonic - 1] ** 2
+    if stream.load.scatter and stream.load.spread is not None:
+        factors = factors + stream.load.spread(stream.load.held(pace))[:, harmonic - 1] ** 2
+    return np.asarray(stream.walkers.weight.expectation(2.0) * factors)
 
 
 def _in_band(now: Situation, mode: Mode) -> float:
@@ -286,18 +355,12 @@ def _in_band(now: Situation, mode: Mode) -> float:
 
 def force_density(now: Situation, mode: Mode, stream: Stream) -> float:
     """One-sided spectral density [N2/Hz] of a stream's modal force at the mode's frequency."""
-    offset = stream.walkers.offset
-    x, w = offset.nodes
-    square = now.model.mean_square(mode, math.fsum(w * x), math.fsum(w * x * x), ("vertical",))
-    weight_square = stream.walkers.weight.expectation(2.0)
-    total = 0.0
+    square, total = _mean_square(now, mode, stream), 0.0
     for k in range(1, stream.load.harmonics + 1):
         pace = np.array([mode.frequency / k])
-        factor = float(stream.load.factors(pace)[0, k - 1]) ** 2
-        if stream.load.scatter and stream.load.spread is not None:
-            factor += float(stream.load.spread(stream.load.held(pace))[0, k - 1]) ** 2
+        force_square = float(_force_square(stream, pace, k)[0])
         total += narrow_band.stream_density(
-            stream.persons, square, weight_square * factor, density_on_deck(stream, float(pace[0])), k
+            stream.persons, square, force_square, density_on_deck(stream, float(pace[0])), k
         )
     return total
 
@@ -307,8 +370,13 @@ def _deflection(now: Situation) -> Iterator[Method]:
     if not upright:
         return
     mode = min(upright, key=lambda m: m.frequency)
+    source = "18/sqrt(mm), common practice"
+    if not simple_span(mode, now.bare.length) or len(mode.directions) > 1:
+        note = "the rule is for the first vertical mode of a single span"
+        yield _method(now, mode, DEFLECTION, source, None, measure="static deflection", unit="m", note=note)
+        return
     yield _method(
-        now, mode, DEFLECTION, "18/sqrt(mm), common practice", static_deflection.deflection(mode.frequency),
+        now, mode, DEFLECTION, source, static_deflection.deflection(mode.frequency),
         measure="static deflection", unit="m",
         stands_for=f"what a simple span of {number(mode.frequency, 4)} Hz sags under its own weight: a check of the "
         "frequency against a static calculation",

@@ -88,19 +88,24 @@ def speed_at(walkers: Walkers, pace: float) -> float:
 def share_on_deck(stream: Stream, low: float, high: float) -> float:
     """Share of the persons on the deck whose pace is within [low, high] Hz: slow ones stay longer."""
     pace = stream.walkers.pace
-    x, w = pace.nodes
-    if pace.kind == "fixed" or high - low > 0.2 * (pace.quantile(FASTEST_SHARE) - pace.quantile(SLOWEST_SHARE)):
-        weight = w * _stay(stream, x)
-        return float(np.sum(weight[(x >= low) & (x <= high)]) / np.sum(weight))
-    middle = 0.5 * (low + high)
-    return pace.share_within(low, high) * float(_stay(stream, np.array([middle]))[0] / np.sum(w * _stay(stream, x)))
+    if pace.kind == "fixed":
+        return float(low <= pace.mean <= high)
+    x = np.linspace(max(low, pace.minimum), min(high, pace.maximum), 201)
+    if x[0] >= x[-1]:
+        return 0.0
+    return float(np.trapezoid(densities_on_deck(stream, x), x))
+
+
+def densities_on_deck(stream: Stream, pace: Floats) -> Floats:
+    """Probability density [1/Hz] of each of `pace` among the persons on the deck."""
+    x, w = stream.walkers.pace.nodes
+    stay = _stay(stream, pace) / np.sum(w * _stay(stream, x))
+    return np.array([stream.walkers.pace.density(float(p)) for p in pace]) * stay
 
 
 def density_on_deck(stream: Stream, pace: float) -> float:
     """Probability density [1/Hz] of `pace` among the persons on the deck."""
-    x, w = stream.walkers.pace.nodes
-    stay = float(_stay(stream, np.array([pace]))[0] / np.sum(w * _stay(stream, x)))
-    return stream.walkers.pace.density(pace) * stay
+    return float(densities_on_deck(stream, np.array([pace]))[0])
 
 
 def _stay(stream: Stream, pace: Floats) -> Floats:
@@ -145,15 +150,17 @@ def _one(model: ModalModel, mode: Mode, alike: list[Stream], harmonic: int) -> R
         mode=mode, gait=stream.load.gait, streams=tuple(one.walkers.name for one in alike), harmonic=harmonic,
         pace=pace, speed=speed, weight=stream.walkers.weight.expectation(),
         load_factor=float(stream.load.factors(np.array([pace]))[0, harmonic - 1]),
-        line=best[3], path=best[2], top=abs(model.largest(mode, "vertical")[2]), simple=_simple(mode, s),
+        line=best[3], path=best[2], top=abs(model.largest(mode, "vertical")[2]), simple=simple_span(mode, model.length),
         crossing=best[1], cycles=mode.frequency * model.length / speed, persons=persons,
         in_band=near / persons if persons else 0.0,
     )  # fmt: skip
 
 
-def _simple(mode: Mode, s: Floats) -> bool:
+def simple_span(mode: Mode, length: float) -> bool:
+    """Whether the vertical shape is sin(pi s/L), within 2 %, and does not twist."""
+    s = np.linspace(0.0, length, PLACES)
     along = np.abs(mode.ordinate("vertical", s))
-    half_sine = np.sin(np.pi * s / s[-1])
+    half_sine = np.sin(np.pi * s / length)
     return mode.twist is None and bool(np.all(np.abs(along / along.max() - half_sine) < 0.02))
 
 

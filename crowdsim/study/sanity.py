@@ -164,7 +164,15 @@ def _case(scenario: Scenario, case: Case) -> list[Finding]:
             f"{100 * case.choice.expected_error:.3g} %; leave time_step out for about 0.02 %",
         )
     if not any(m.driven for m in case.model.modes):
-        found.append(Finding("error", "mode", "no mode has a vertical or twist ordinate: no force would drive any"))
+        found.append(
+            Finding(
+                "error",
+                "mode",
+                "no mode has a vertical or twist ordinate: no force would drive any. Forces are vertical in this "
+                "version; lateral and longitudinal comfort cannot be judged with it. Give a mode that moves the "
+                "deck vertically",
+            )
+        )
         return found
     if not resonates(case.driven, case.streams):
         warn(
@@ -245,6 +253,12 @@ def _case(scenario: Scenario, case: Case) -> list[Finding]:
             "comfort.window",
             f"{case.window:g} s is longer than the observed {case.duration:g} s: no whole window fits, so a target can "
             "be found not met but never met; make duration at least as long",
+        )
+    if case.event and case.recorder.segments > 1:
+        warn(
+            "comfort.window",
+            f"{case.window:g} s cuts a record of given arrivals into {case.recorder.segments} windows that are not "
+            "alike: those in which nobody walks count in every probability; leave window out to judge the whole event",
         )
     if scenario.file.comfort.window is None and case.window < DEFAULT_WINDOW - 1e-9 and not case.event:
         warn(

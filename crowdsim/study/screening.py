@@ -15,7 +15,7 @@ from crowdsim.study.resonances import reaching
 from crowdsim.study.situation import Situation
 
 FULL = 70.0  # kg/m2: one person of 70 kg a square metre, the loaded deck of Setra 2006, from memory
-HARMONICS = (("walking", 1), ("walking", 2), ("jogging", 1))
+HARMONICS = (("walking", 1), ("walking", 2), ("jogging", 1))  # that sources have ranges for
 
 
 @dataclass(frozen=True)
@@ -52,10 +52,16 @@ def screen(situations: Sequence[Situation]) -> Iterator[Screened]:
             states = (mode.frequency, _with_people(bare, mode, busiest), _full(bare, mode))
             rows = [
                 row
-                for gait, harmonic in HARMONICS
+                for gait, harmonic in _harmonics(situations)
                 if (row := _row(situations, mode, direction, gait, harmonic, states)) is not None
             ]
             yield from rows or [_quiet(mode, direction, states)]
+
+
+def _harmonics(situations: Sequence[Situation]) -> list[tuple[str, int]]:
+    """What sources have ranges for, and every harmonic of every stream's load."""
+    own = {(s.load.gait, k) for now in situations for s in now.streams for k in range(1, s.load.harmonics + 1)}
+    return [*HARMONICS, *sorted(own - set(HARMONICS), key=lambda x: (x[0] != "walking", x[1]))]
 
 
 def _with_people(bare: ModalModel, mode: Mode, now: Situation) -> float:
@@ -121,8 +127,11 @@ def _reached(
 
 def _quiet(mode: Mode, direction: str, states: tuple[float, float, float]) -> Screened:
     en = _named(EN_1990, direction, "walking", 1, min(states), max(states))
-    why = (
-        f"{number(mode.frequency, 4)} Hz lies outside the ranges of EUR 23984 and Setra, and no stream's first or "
-        "second harmonic reaches it"
+    why = f"{number(mode.frequency, 4)} Hz lies outside the ranges of EUR 23984 and Setra, and no stream reaches it"
+    if en:
+        why = f"EN 1990: {en}; {why}"
+    if direction != "vertical":
+        why += f"; {direction} forces are not simulated in this version"
+    return Screened(
+        mode.name, direction, "", 0, *states, eur="", setra="", en=en, streams=(), simulate=bool(en), why=why
     )
-    return Screened(mode.name, direction, "", 0, *states, eur="", setra="", en=en, streams=(), simulate=False, why=why)

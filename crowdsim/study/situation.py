@@ -109,7 +109,7 @@ def situation(scenario: Scenario, table: CaseTable) -> Situation:
     chosen = [s for s in file.stream if table.streams is None or s.name in table.streams]
     model, added = bare, {m.name: 0.0 for m in bare.modes}
     for _ in range(50):
-        streams = tuple(_stream(s, model, file.run.duration, scenario.source) for s in chosen)
+        streams = tuple(_stream(s, model, scenario.source) for s in chosen)
         if table.people == "none":
             break
         found = {m.name: _people_mass(bare, m, streams) for m in bare.modes}
@@ -129,14 +129,15 @@ def situation(scenario: Scenario, table: CaseTable) -> Situation:
 def _window(given: float | None, duration: float, timed: bool) -> float:
     """The comfort window [s]: the whole record where that is shorter and nothing longer was asked for.
 
-    Given arrivals are an event: whoever comes is in the record, and a longer window holds no more.
+    Given arrivals are an event: its windows are not alike, most of a long record's hold nobody, so the record is the
+    window unless a shorter one was asked for.
     """
-    if given is None or timed:
-        return min(given or DEFAULT_WINDOW, duration)
-    return given
+    if timed:
+        return min(given or duration, duration)
+    return min(DEFAULT_WINDOW, duration) if given is None else given
 
 
-def _stream(table: StreamTable, model: ModalModel, duration: float, source: str) -> Stream:
+def _stream(table: StreamTable, model: ModalModel, source: str) -> Stream:
     population = POPULATIONS[table.population or DEFAULT_POPULATION[table.gait]]
     sources: list[str] = []
 
@@ -182,7 +183,7 @@ def _stream(table: StreamTable, model: ModalModel, duration: float, source: str)
         forward_share=table.forward_share,
     )
     inverse = walkers.inverse_speed()
-    arrivals, persons = _arrivals(table, model, inverse, duration)
+    arrivals, persons = _arrivals(table, model, inverse)
     load = _load(table, sources)
     return Stream(
         walkers=replace(walkers, arrivals=arrivals),
@@ -207,7 +208,7 @@ def _offset(table: StreamTable, model: ModalModel) -> Distribution:
     return Distribution("uniform", minimum=-(half - EDGE), maximum=half - EDGE)
 
 
-def _arrivals(table: StreamTable, model: ModalModel, inverse: float, duration: float) -> tuple[Arrivals, float]:
+def _arrivals(table: StreamTable, model: ModalModel, inverse: float) -> tuple[Arrivals, float]:
     a = table.arrival
     crossing = model.length * inverse
     if a.per_hour is not None:
@@ -219,8 +220,8 @@ def _arrivals(table: StreamTable, model: ModalModel, inverse: float, duration: f
         return ConstantNumber(a.constant), float(a.constant)
     assert a.times is not None
     times = tuple(sorted(a.times))
-    # at the mean crossing time, over the observed time or up to the last who leaves
-    return GivenArrivals(times), len(times) * crossing / max(duration, times[-1] + crossing)
+    # at the mean crossing time, from the first arrival to the last departure
+    return GivenArrivals(times), len(times) * crossing / (times[-1] - times[0] + crossing)
 
 
 def _load(table: StreamTable, sources: list[str]) -> loads.LoadSet:
