@@ -52,8 +52,10 @@ class Comparison:
 
     def leading(self, case: str) -> tuple[Compared, ...]:
         """Those of the mode at whose antinode the peak is largest, with the harmonic of the largest crossing."""
-        said = next(c for c in self.summary.cases if c.name == case)
-        now = next(s for s in self.estimates.situations if s.name == case)
+        said = next((c for c in self.summary.cases if c.name == case), None)
+        now = next((s for s in self.estimates.situations if s.name == case), None)
+        if said is None or now is None:
+            return ()
         here = [r for r in self.of(case) if r.method.value is not None and r.method.measure == PEAK]
 
         def largest(mode: str) -> float:
