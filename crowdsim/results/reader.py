@@ -113,6 +113,9 @@ def open_file(path: str | Path) -> Any:
         raise ResultsError(
             f"{path}: written in format {version}; this program reads up to {FORMAT_VERSION}. Update crowdsim"
         )
+    if any("criterion" not in case.attrs for case in file["cases"].values()):
+        file.close()
+        raise ResultsError(f"{path}: written by an earlier state of this version; run simulate again")
     return file
 
 

@@ -17,9 +17,10 @@ from numpy.typing import NDArray
 from crowdsim.guides.catalogue import CRITERIA
 from crowdsim.response.verdict import realisations_to_decide
 from crowdsim.response.windows import window_exceedance, window_percentile
-from crowdsim.results.judgement import Judgement, Question, asked, buys, judge
+from crowdsim.results.judgement import Judgement, Question, asked, judge
 from crowdsim.results.reader import open_results
 from crowdsim.results.summary import summarise
+from crowdsim.results.wording import buys
 from crowdsim.scenario.reader import Scenario
 from crowdsim.study.simulate import plan, simulate_to
 
@@ -73,7 +74,8 @@ def test_undecided_with_the_number_that_would_decide() -> None:
     assert said.verdict == "undecided"
     assert said.class_name == "CL2"
     assert said.needed == realisations_to_decide(window_exceedance(peaks, 1.0), 100) == 2000
-    assert "about 2,000 realisations would decide, if 4.0 % of the windows stay above the limit" in said.note
+    assert "if 4.0 % of the windows stay above the limit, 2,000 realisations decide in about half of all" in said.note
+    assert "a run that is extended until it decides is no longer 95 % sure" in said.note
 
 
 def test_undecided_and_no_number_would_decide() -> None:
@@ -82,7 +84,7 @@ def test_undecided_and_no_number_would_decide() -> None:
     said = judged(peaks, target="CL2")
     assert (said.verdict, said.needed) == ("undecided", None)
     assert "5.0 % of the windows are above the limit: so near 5.0 % that no number in reach would decide" in said.note
-    assert "would decide)" not in said.sentence
+    assert "realisations would decide" not in said.sentence
 
 
 def test_the_upper_end_at_the_limit_is_met() -> None:
@@ -238,7 +240,8 @@ def test_several_windows_a_realisation() -> None:
 def test_the_whole_record_as_window() -> None:
     said = judge(attributes(duration=100.0, window=100.0), "vertical", np.ones((80, 1)), np.ones(80))
     assert (said.whole, said.short, said.window) == (True, False, 100.0)
-    assert "in 1.67 min is" in said.sentence
+    assert (said.asked_window, said.rest) == (100.0, 0.0)
+    assert "in 100 s is" in said.sentence
 
 
 def short(values: Floats, **other: Any) -> Judgement:
@@ -250,6 +253,7 @@ def test_a_record_shorter_than_the_window_is_never_met() -> None:
     """A peak in a longer time can only be higher."""
     said = short(hundred(0.1, 0.2, 0.3, 0.4), target="CL2")
     assert (said.short, said.whole, said.window, said.windows) == (True, True, 60.0, 1)
+    assert (said.asked_window, said.rest) == (240.0, 0.0)  # the record is judged whole
     assert (said.verdict, said.needed) == ("undecided", None)
     assert "the record of 60 s is shorter than the comfort window of 4 min" in said.note
     assert "make duration at least 240 s" in said.note
@@ -286,9 +290,66 @@ def test_the_sentence_has_everything() -> None:
         "(2009); the limit of 1.00 m/s2 (upper bound of CL2, EUR 23984 (2009)) is met."
     )
     undecided = judged(hundred(0.5, 0.9, 0.95, 1.2), target="CL2").sentence
-    assert undecided.endswith("is neither shown to be met nor to be exceeded (about 2,000 realisations would decide).")
+    assert undecided.endswith(
+        "is neither shown to be met nor to be exceeded (about 2,000 realisations would decide, as likely as not)."
+    )
     for part in ("market day", "95 % value", "4 min", "0.950 m/s2", "0.900 to 1.20 m/s2", "class CL2", "1.00 m/s2"):
         assert part in undecided
+
+
+# ---------------------------------------------------------------- what is shown, classes of the interval's ends
+
+
+@pytest.mark.parametrize(
+    ("value", "other", "shown"),
+    [
+        (0.49996, {}, "0.49996"),  # 0.500 would read as class 2
+        (0.5, {}, "0.500"),  # at the bound, and shown so
+        (0.4912, {}, "0.491"),
+        (0.99996, {}, "0.99996"),
+        (0.69972, {"limit": 0.7}, "0.6997"),  # the owner's limit counts like a bound
+        (0.69972, {}, "0.700"),
+        (0.69999, {"criterion": "en-1990"}, "0.69999"),
+    ],
+)
+def test_a_value_is_shown_apart_from_a_bound(value: float, other: dict[str, Any], shown: str) -> None:
+    said = judged(hundred(0.1, 0.9 * value, value, 1.1 * value), **other)
+    assert said.value.value == value
+    assert said.shown == shown
+    assert f" is {shown} m/s2 (95 % confidence" in said.sentence
+
+
+@pytest.mark.parametrize(
+    ("at_90", "at_95", "largest", "classes"),
+    [
+        (0.6, 0.7, 0.8, ("CL2", "CL2", "CL2")),
+        (0.6, 0.7, 1.0, ("CL2", "CL2", "CL3")),  # at the edge: the worse one
+        (0.49, 0.7, 0.99, ("CL1", "CL2", "CL2")),
+        (0.4, 0.7, 2.6, ("CL1", "CL2", "CL4")),
+    ],
+)
+def test_classes_of_the_ends_of_the_interval(
+    at_90: float, at_95: float, largest: float, classes: tuple[str, str, str]
+) -> None:
+    said = judged(hundred(0.1, at_90, at_95, largest))
+    assert (said.value.low, said.value.value, said.value.high) == (at_90, at_95, largest)
+    assert (said.class_low, said.class_name, said.class_high) == classes
+
+
+def test_no_classes_of_ends_that_are_not_there() -> None:
+    few = judged(np.linspace(0.2, 0.4, 71)[:, None])
+    assert (few.class_low, few.class_name, few.class_high) == (None, "CL1", None)
+    other = judged(hundred(0.1, 0.6, 0.7, 0.8), question=Question(0.9, None))
+    assert (other.class_low, other.class_name, other.class_high) == (None, None, None)
+
+
+@pytest.mark.parametrize(
+    ("duration", "windows", "rest"), [(750.0, 3, 30.0), (720.0, 3, 0.0), (900.0, 3, 180.0), (240.0, 1, 0.0)]
+)
+def test_what_is_left_of_a_record(duration: float, windows: int, rest: float) -> None:
+    peaks = np.random.default_rng(2).gumbel(0.6, 0.1, (100, windows))
+    said = judge(attributes(duration=duration), "vertical", peaks, peaks.max(axis=1))
+    assert (said.asked_window, said.window, said.rest) == (240.0, 240.0, rest)
 
 
 # ---------------------------------------------------------------- another question

@@ -20,6 +20,7 @@ from crowdsim.results.sensitivity import (
     Base,
     Sensitivity,
     Varied,
+    cases_for,
     ranked,
     read_sensitivity,
     write_sensitivity,
@@ -165,15 +166,44 @@ def test_sentences() -> None:
     text = result().text()
     # half the interval of the base is 6.3 %
     assert text == (
-        "The 95 % peak of day, 1.20 m/s2, most depends on: frequency (-45 to +12 %). Less than by chance: load set "
-        "(-5 to +3 %), step length (+0.2 %). Chance leaves -5 to +8 %, all that more realisations could remove."
+        "The 95 % peak of day in 4 min, 1.20 m/s2 from 200 realisations, most depends on: frequency (-45 to +12 %). "
+        "Smaller than what chance leaves in it: load set (-5 to +3 %), step length (+0.2 %). Chance leaves -5 to +8 %, "
+        "all that more realisations could remove."
     )
     assert result().not_varied_text() == "Not varied: weights; times of school."
     assert result(not_varied=()).not_varied_text() == ""
     assert result(variations=(), order=()).text() == "day: no variation could be run."
+    many = result(window=75.0, realisations=12000).text()
+    assert many.startswith("The 95 % peak of day in 75 s, 1.20 m/s2 from 12,000 realisations, most depends on: ")
     few = result(base=Base(1.2, None, None)).text()
     assert few.endswith("frequency (-45 to +12 %), load set (-5 to +3 %), step length (+0.2 %).")
 
 
 def test_a_base_that_hides_everything_still_names_the_largest() -> None:
-    assert "most depends on: frequency (-45 to +12 %). Less" in result(base=Base(1.2, 0.5, 2.5)).text()
+    text = result(base=Base(1.2, 0.5, 2.5)).text()
+    assert "most depends on: frequency (-45 to +12 %). Smaller than what chance leaves in it: load set" in text
+
+
+def test_everything_above_chance_names_nothing_below() -> None:
+    text = result(base=Base(1.2, 1.1999, 1.2001)).text()  # half the interval: 0.008 %
+    assert "frequency (-45 to +12 %), load set (-5 to +3 %), step length (+0.2 %)." in text
+    assert "Smaller than" not in text
+
+
+def test_cases_for_a_scenario(run: Path) -> None:
+    """Names with their keys, of a file of the very same text."""
+    assert cases_for(run, TEXT) == {"day": "0", "night": "1"}
+    with pytest.raises(ResultsError, match=r"run\.h5: holds results of another scenario"):
+        cases_for(run, TEXT + "\n")
+    with pytest.raises(ResultsError, match="no such file"):
+        cases_for(run.with_name("none.h5"), TEXT)
+
+
+def test_cases_for_more_than_ten_cases(tmp_path: Path) -> None:
+    """HDF5 orders keys as text, 10 before 2: a name still leads to its own key."""
+    names = tuple(f"case {i}" for i in range(12))
+    write_run(tmp_path / "many.h5", names)
+    assert cases_for(tmp_path / "many.h5", TEXT) == {name: str(i) for i, name in enumerate(names)}
+    write_sensitivity(tmp_path / "many.h5", TEXT, result("case 10"))
+    write_sensitivity(tmp_path / "many.h5", TEXT, result("case 2"))
+    assert [s.case for s in read_sensitivity(tmp_path / "many.h5")] == ["case 2", "case 10"]

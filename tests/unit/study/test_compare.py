@@ -12,8 +12,10 @@ import numpy as np
 import pytest
 from scipy import stats
 
+from crowdsim.guides.narrow_band import vanmarcke
+from crowdsim.response.statistics import MeanSquare, root_mean_square
 from crowdsim.results.reader import open_results
-from crowdsim.results.summary import PointSummary, Summary, summarise
+from crowdsim.results.summary import CaseSummary, PointSummary, Summary, summarise
 from crowdsim.scenario.reader import Scenario
 from crowdsim.study.compare import Compared, Comparison, compare, compare_file, marks
 from crowdsim.study.estimate import (
@@ -25,6 +27,8 @@ from crowdsim.study.estimate import (
     RMS,
     SQUARE_ROOT,
     STEADY,
+    STREAM_PEAK,
+    STREAM_SD,
     estimate,
 )
 from crowdsim.study.simulate import plan, simulate_to
@@ -91,20 +95,25 @@ def test_peaks_stand_beside_the_judged_value(path: Path, said: Comparison) -> No
             assert one.ratio_low <= one.ratio <= one.ratio_high
 
 
-def test_root_mean_squares_stand_beside_the_mean_at_the_modes_antinode(path: Path, said: Comparison) -> None:
-    """With the standard error of the mean and Student's distribution."""
+def test_root_mean_squares_stand_beside_that_of_all_realisations_at_the_modes_antinode(
+    path: Path, said: Comparison
+) -> None:
+    """The root of the mean of the squares, which a formula's variance is; Student's interval is of the squares, too."""
     for name, stored in (("day", open_results(path).case("day")), ("people", open_results(path).case("people"))):
         for mode in ("V1", "V2"):
-            one = row(said.of(name), NARROW_SD, mode)
-            rms = stored.rms[:, stored.points.name.index(f"{mode} vertical")]
-            half = stats.t.ppf(0.975, COUNT - 1) * rms.std(ddof=1) / math.sqrt(COUNT)
-            assert one.simulated == pytest.approx(rms.mean(), rel=1e-14)
-            assert one.simulated_low == pytest.approx(rms.mean() - half, rel=1e-12)
-            assert one.simulated_high == pytest.approx(rms.mean() + half, rel=1e-12)
-            assert one.method.value is not None
-            assert one.ratio == pytest.approx(one.method.value / rms.mean(), rel=1e-12)
-            assert one.ratio_low == pytest.approx(one.method.value / (rms.mean() + half), rel=1e-12)
-            assert one.ratio_high == pytest.approx(one.method.value / (rms.mean() - half), rel=1e-12)
+            square = stored.rms[:, stored.points.name.index(f"{mode} vertical")] ** 2
+            low, high = stats.t.interval(0.95, COUNT - 1, loc=square.mean(), scale=stats.sem(square))
+            value, low, high = math.sqrt(square.mean()), math.sqrt(low), math.sqrt(high)
+            assert value > np.sqrt(square).mean() * 1.001  # another number than the mean of the rms
+            for formula in (NARROW_SD, STREAM_SD):
+                one = row(said.of(name), formula, mode)
+                assert one.simulated == pytest.approx(value, rel=1e-14)
+                assert one.simulated_low == pytest.approx(low, rel=1e-12)
+                assert one.simulated_high == pytest.approx(high, rel=1e-12)
+                assert one.method.value is not None
+                assert one.ratio == pytest.approx(one.method.value / value, rel=1e-12)
+                assert one.ratio_low == pytest.approx(one.method.value / high, rel=1e-12)
+                assert one.ratio_high == pytest.approx(one.method.value / low, rel=1e-12)
 
 
 def test_what_has_no_simulated_number(said: Comparison) -> None:
@@ -127,6 +136,45 @@ def test_another_percentile_stands_beside_the_formulas(path: Path) -> None:
     assert row(found.of("day"), STEADY).simulated == value.value
 
 
+def peak_factor(found: Comparison, case: str) -> float:
+    """That of the random stream on V1, all paces."""
+    peak, sd = (row(found.of(case), name).method.value for name in (STREAM_PEAK, STREAM_SD))
+    assert peak is not None
+    assert sd is not None
+    return peak / sd
+
+
+@pytest.mark.parametrize("percentile", [0.5, 0.9, 0.95])
+def test_formulas_with_a_percentile_follow_it(path: Path, said: Comparison, percentile: float) -> None:
+    """Vanmarcke's factor of the percentile in the window of 60 s; formulas without one stay."""
+    found = compare_file(path, percentile=percentile)
+    for now in found.estimates.situations:
+        mode = now.model.mode("V1")
+        factor = vanmarcke(percentile, mode.frequency, mode.damping, 60.0)
+        assert peak_factor(found, now.name) == pytest.approx(factor, rel=1e-12)
+        assert row(found.of(now.name), STREAM_PEAK).method.stands_for.startswith(f"{100 * percentile:g} % value")
+        for name in (STEADY, CROSSING, SQUARE_ROOT, STREAM_SD, NARROW_SD):
+            assert row(found.of(now.name), name).method == row(said.of(now.name), name).method
+    assert (peak_factor(found, "day") < 0.99 * peak_factor(said, "day")) == (percentile < 0.95)
+
+
+def test_a_record_shorter_than_the_window_goes_with_its_own_time(
+    scenario: Callable[..., Scenario], tmp_path: Path
+) -> None:
+    """20 s observed, 60 s asked for: the simulated peak is that of 20 s, and so is the formula's."""
+    out = tmp_path / "short.h5"
+    short = (("duration = 900.0", "duration = 20.0"), ("", "[comfort]\nwindow = 60\n"))
+    simulate_to(plan(scenario(*short), realisations=2), out)
+    found = compare_file(out)
+    judgement = found.summary.cases[0].deck[0].judgement
+    assert judgement is not None
+    assert (judgement.short, judgement.window, judgement.asked_window) == (True, 20.0, 60.0)
+    assert peak_factor(found, "all streams") == pytest.approx(vanmarcke(0.95, 1.92, 0.005, 20.0), rel=1e-12)
+    (alone,) = [m for m in estimate(scenario(*short)).methods if m.name == STREAM_PEAK]
+    assert alone.value is not None
+    assert row(found.rows, STREAM_PEAK).method.value < alone.value  # type: ignore[operator]
+
+
 def test_a_case_that_was_not_run_is_left_out(path: Path, scenario: Callable[..., Scenario]) -> None:
     summary = summarise(path, "Weir Lane")
     alone = compare(replace(summary, cases=summary.cases[1:]), scenario(*CHANGES))
@@ -137,7 +185,7 @@ def test_without_an_interval_the_ratio_has_none(scenario: Callable[..., Scenario
     out = tmp_path / "few.h5"
     simulate_to(plan(scenario(*CHANGES), realisations=1), out)
     few = compare_file(out)
-    for name in (STEADY, NARROW_SD):
+    for name in (STEADY, NARROW_SD, STREAM_SD):
         one = row(few.of("day"), name)
         assert one.ratio is not None
         assert (one.simulated_low, one.simulated_high, one.ratio_low, one.ratio_high) == (None,) * 4
@@ -147,30 +195,86 @@ def test_without_an_interval_the_ratio_has_none(scenario: Callable[..., Scenario
 # ---------------------------------------------------------------- the leading mode
 
 
-def test_the_leading_mode_is_that_of_the_largest_crossing(said: Comparison) -> None:
+def recorded(said: Comparison, case: str) -> dict[str, float]:
+    """95 % value of the peak at the antinodes of V1 and V2."""
+    points = {p.name: p for c in said.summary.cases if c.name == case for p in c.points}
+    return {mode: points[f"{mode} vertical"].peak.p95.value for mode in ("V1", "V2")}
+
+
+def test_the_leading_mode_is_that_with_the_largest_recorded_peak(said: Comparison) -> None:
     """V1 with the first harmonic: 0.4 against 0.1 of the weight on V2."""
     for case in ("day", "people"):
-        crossings = {r.method.mode: r.method.value for r in said.of(case) if r.method.name == CROSSING}
-        assert crossings["V1"] > crossings["V2"]
+        peaks = recorded(said, case)
+        assert peaks["V1"] > peaks["V2"]
         leading = said.leading(case)
         assert {r.method.mode for r in leading} == {"V1"}
         assert {r.method.case for r in leading} == {case}
         names = [r.method.name for r in leading if r.method.direction == "vertical"]
         assert len(names) == len(set(names))
-        assert {STEADY, CROSSING, SQUARE_ROOT, NARROW_SD, NARROW_PEAK} <= set(names)
+        assert {STEADY, CROSSING, SQUARE_ROOT, STREAM_SD, STREAM_PEAK, NARROW_SD, NARROW_PEAK} <= set(names)
         assert {r.method.measure for r in leading} == {PEAK, RMS}
         values = {r.method.name: r.method.value for r in leading if r.method.value is not None}
         assert [value for _, value in marks(said, case)] == [
-            values[n] for n in (STEADY, CROSSING, SQUARE_ROOT, NARROW_PEAK)
+            values[n] for n in (STEADY, CROSSING, SQUARE_ROOT, STREAM_PEAK)
         ]
     assert marks(said, "nobody") == []
 
 
-def test_the_second_mode_leads_where_it_is_light(said: Comparison, scenario: Callable[..., Scenario]) -> None:
-    light = (*CHANGES[:2], ("", SECOND.replace("MASS", "2e3")), *CHANGES[3:])
-    leading = compare(said.summary, scenario(*light)).leading("day")
+def test_the_second_mode_leads_where_it_is_light(scenario: Callable[..., Scenario], tmp_path: Path) -> None:
+    """A twentieth of the mass: run, and with the harmonic that reaches it."""
+    out = tmp_path / "light.h5"
+    light = scenario(*CHANGES[:2], ("", SECOND.replace("MASS", "2e3")), *CHANGES[3:])
+    simulate_to(plan(light, realisations=5), out)
+    found = compare_file(out)
+    assert recorded(found, "day")["V2"] > recorded(found, "day")["V1"]
+    leading = found.leading("day")
     assert {r.method.mode for r in leading} == {"V2"}
     assert {r.method.harmonic for r in leading} == {2, None}
+    assert {STEADY, CROSSING, STREAM_SD} <= {r.method.name for r in leading}
+
+
+def test_the_record_decides_which_mode_leads_not_the_formula(
+    said: Comparison, scenario: Callable[..., Scenario]
+) -> None:
+    """One crossing is larger on V1; with a larger recorded peak V2 leads, whatever the peak at other points."""
+    case = said.summary.cases[0]
+    crossings = {r.method.mode: r.method.value for r in said.of(case.name) if r.method.name == CROSSING}
+    assert crossings["V1"] > crossings["V2"]
+    top = recorded(said, case.name)["V1"]
+    for name, leads in (("V2 vertical", "V2"), ("V1 lateral", "V1"), ("V6 vertical", "V1")):
+        points = tuple(
+            replace(p, peak=replace(p.peak, p95=replace(p.peak.p95, value=1.01 * top))) if p.name == name else p
+            for p in case.points
+        )
+        assert points != case.points
+        summary = replace(said.summary, cases=(replace(case, points=points), *said.summary.cases[1:]))
+        found = compare(summary, scenario(*CHANGES))
+        assert {r.method.mode for r in found.leading(case.name)} == {leads}
+        assert {r.method.mode for r in found.leading("people")} == {"V1"}
+
+
+def test_the_harmonic_is_that_of_the_largest_crossing(said: Comparison, scenario: Callable[..., Scenario]) -> None:
+    """Joggers' first harmonic and walkers' second, both on V2 at 3.8 Hz: either may be the larger one."""
+    lead = replace(said.summary, cases=(led_by_v2(said), *said.summary.cases[1:]))
+    for factor, expected in ((1.3, ("run", 1)), (0.01, ("commuters", 2))):
+        run = (
+            '[[stream]]\nname = "run"\ngait = "jogging"\narrival = { per_hour = 30 }\nspeed = 3\n'
+            f"pace = {{ mean = 3.6, sd = 0.1, min = 3.2, max = 4.0 }}\nload = {{ harmonics = [{factor}] }}\n"
+        )
+        leading = compare(lead, scenario(*CHANGES, ("", run))).leading("day")
+        assert {r.method.mode for r in leading} == {"V2"}
+        assert {(r.method.stream, r.method.harmonic) for r in leading if r.method.harmonic} == {expected}
+        assert [r.method.name for r in leading].count(CROSSING) == 1
+
+
+def led_by_v2(said: Comparison) -> CaseSummary:
+    """The first case with a peak of 9 m/s2 at the antinode of V2."""
+    case = said.summary.cases[0]
+    points = tuple(
+        replace(p, peak=replace(p.peak, p95=replace(p.peak.p95, value=9.0))) if p.name == "V2 vertical" else p
+        for p in case.points
+    )
+    return replace(case, points=points)
 
 
 def test_nothing_leads_where_nobody_reaches_a_mode(said: Comparison, scenario: Callable[..., Scenario]) -> None:
@@ -200,7 +304,8 @@ def test_a_mode_of_any_name_finds_its_antinode(scenario: Callable[..., Scenario]
     read = scenario(('name = "V1"', f'name = "{name}"'), ("duration = 900.0", "duration = 20.0"))
     simulate_to(plan(read, realisations=2), out)
     found = compare_file(out)
-    assert row(found.rows, NARROW_SD, name).simulated == found.summary.cases[0].points[0].rms.mean
+    assert row(found.rows, NARROW_SD, name).simulated == found.summary.cases[0].points[0].rms_of_all.value
+    assert {r.method.mode for r in found.leading("all streams")} == {name}
 
 
 def test_two_modes_at_one_place_share_it(scenario: Callable[..., Scenario], tmp_path: Path) -> None:
@@ -209,26 +314,29 @@ def test_two_modes_at_one_place_share_it(scenario: Callable[..., Scenario], tmp_
     simulate_to(plan(scenario(("", third), ("duration = 900.0", "duration = 20.0")), realisations=2), out)
     found = compare_file(out)
     assert found.summary.cases[0].points[0].name == "V1+V3"
-    mean = found.summary.cases[0].points[0].rms.mean
-    assert row(found.rows, NARROW_SD, "V1").simulated == row(found.rows, NARROW_SD, "V3").simulated == mean
+    value = found.summary.cases[0].points[0].rms_of_all.value
+    assert row(found.rows, STREAM_SD, "V1").simulated == row(found.rows, STREAM_SD, "V3").simulated == value
 
 
-def with_rms(summary: Summary, mean: float, sd: float, count: int) -> Summary:
+def with_rms(summary: Summary, found: MeanSquare) -> Summary:
     """The first case with these numbers at its first point."""
     case = summary.cases[0]
-    point: PointSummary = replace(case.points[0], rms=replace(case.points[0].rms, mean=mean, sd=sd, count=count))
+    point: PointSummary = replace(case.points[0], rms_of_all=found)
     return replace(summary, cases=(replace(case, points=(point, *case.points[1:])), *summary.cases[1:]))
 
 
 def test_the_interval_of_a_ratio_holds_the_ratio(said: Comparison, scenario: Callable[..., Scenario]) -> None:
-    """Two realisations that differ much: the lower end of the mean is below nought, and a ratio has no upper end."""
-    summary = with_rms(said.summary, 0.1, 0.08, 2)
-    one = row(compare(summary, scenario(*CHANGES)).of("day"), NARROW_SD)
-    assert 0.1 - 1.959964 * 0.08 / math.sqrt(2) < 0.0
-    assert one.ratio is not None
-    assert one.ratio_low is not None
-    assert one.ratio_low < one.ratio
-    assert one.ratio_high is None or one.ratio_high > one.ratio
+    """Two realisations that differ much: the lower end of the mean square is nought, and a ratio has no upper end."""
+    two = root_mean_square(np.array([0.05, 0.15]))
+    assert two.low == 0.0
+    for found, upper in ((two, False), (MeanSquare(0.1, 0.02, 0.14), True)):
+        one = row(compare(with_rms(said.summary, found), scenario(*CHANGES)).of("day"), NARROW_SD)
+        assert one.simulated == found.value
+        assert one.ratio is not None
+        assert one.ratio_low is not None
+        assert one.ratio_low < one.ratio
+        assert (one.ratio_high is not None) == upper
+        assert one.ratio_high is None or one.ratio_high > one.ratio
 
 
 def test_json(said: Comparison) -> None:

@@ -73,10 +73,30 @@ def test_a_constant_number_is_that_number(case: Callable[..., Case]) -> None:
     assert built.streams[0].walkers.arrivals == ConstantNumber(40)
 
 
-def test_given_times_are_sorted_and_averaged_over_the_run(case: Callable[..., Case]) -> None:
+def test_given_times_are_sorted_and_averaged_over_the_event(case: Callable[..., Case]) -> None:
+    """From the first arrival to the last departure: 3 x 32 s in 100 + 32 s."""
     built = case(STEADY, (ARRIVAL, "{ times = [100.0, 0.0, 50.0] }"))
     assert built.streams[0].walkers.arrivals == GivenArrivals((0.0, 50.0, 100.0))
-    assert built.persons == pytest.approx(3 * 32 / 900, rel=1e-14)
+    assert built.persons == pytest.approx(3 * 32 / 132, rel=1e-14)
+
+
+@pytest.mark.parametrize("duration", [20.0, 120.0, 900.0, 3600.0])
+@pytest.mark.parametrize(
+    ("times", "persons"),
+    [
+        ([0.0], 1.0),  # alone from stepping on to stepping off
+        ([200.0], 1.0),
+        ([0.0] * 7, 7.0),  # abreast
+        ([60.0, 68.0, 76.0], 3 * 32 / 48),
+    ],
+)
+def test_the_number_in_an_event_does_not_hang_on_the_observed_time(
+    case: Callable[..., Case], duration: float, times: list[float], persons: float
+) -> None:
+    """Nor on when it begins, nor does the mass of the people: half of 75 kg each."""
+    built = case(STEADY, MASS, (ARRIVAL, f"{{ times = {times} }}"), ("duration = 900.0", f"duration = {duration}"))
+    assert built.persons == pytest.approx(persons, rel=1e-14)
+    assert built.added_mass["V1"] == pytest.approx(persons * 75 / 2, rel=1e-12)
 
 
 # ---------------------------------------------------------------- people = "mass", pace on a mode

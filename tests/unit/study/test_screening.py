@@ -33,14 +33,16 @@ def rows(modes: str, streams: str = "", more: str = "") -> list[Screened]:
 
 
 def said(found: Sequence[Screened]) -> dict[tuple[str, int], tuple[str, str]]:
-    """(gait, harmonic): first words of EUR 23984 and Setra."""
-    return {(r.gait, r.harmonic): (r.eur.split(",")[0], r.setra.split(",")[0]) for r in found if r.simulate}
+    """(gait, harmonic) that a range of EUR 23984 or Setra or a stream names: first words of both."""
+    named = [r for r in found if r.gait]
+    assert all(r.simulate for r in named)
+    return {(r.gait, r.harmonic): (r.eur.split(",")[0], r.setra.split(",")[0]) for r in named}
 
 
 # ---------------------------------------------------------------- published ranges, each side of every edge
 
 W1, W2, J1 = ("walking", 1), ("walking", 2), ("jogging", 1)
-CRITICAL, SECOND, JOG = "critical range", "second harmonic", "joggers"
+CRITICAL, SECOND, JOG = "critical range", "extended range", "joggers"
 VERTICAL = [
     (0.99, {}),
     (1.0, {W1: ("", "range 2")}),
@@ -53,8 +55,9 @@ VERTICAL = [
     (2.0, {W1: (CRITICAL, "range 1"), J1: (JOG, "runners")}),
     (2.1, {W1: (CRITICAL, "range 1"), J1: (JOG, "runners")}),
     (2.101, {W1: (CRITICAL, "range 2"), J1: (JOG, "runners")}),
-    (2.3, {W1: (CRITICAL, "range 2"), J1: (JOG, "runners")}),
-    (2.301, {W1: ("", "range 2"), J1: (JOG, "runners")}),
+    (2.299, {W1: (CRITICAL, "range 2"), J1: (JOG, "runners")}),
+    (2.3, {W1: (CRITICAL, "range 2"), W2: (SECOND, ""), J1: (JOG, "runners")}),
+    (2.301, {W1: ("", "range 2"), W2: (SECOND, ""), J1: (JOG, "runners")}),
     (2.5, {W1: ("", "range 2"), W2: (SECOND, ""), J1: (JOG, "runners")}),
     (2.6, {W1: ("", "range 2"), W2: (SECOND, "range 3"), J1: (JOG, "runners")}),
     (2.601, {W2: (SECOND, "range 3"), J1: (JOG, "runners")}),
@@ -109,6 +112,30 @@ def test_what_en_1990_wants_verified(frequency: float, direction: str, needed: b
     """Below 5 Hz (vertical), 2.5 Hz (horizontal), whatever harmonic reaches it: said of the mode at least once."""
     found = rows(mode(frequency, direction=direction))
     assert any("verification needed" in r.en for r in found) == needed
+    assert any(r.simulate for r in found) == (needed or bool(said(found)))
+
+
+@pytest.mark.parametrize(
+    ("frequency", "direction", "words"),
+    [(0.7, "vertical", "below 5 Hz"), (0.2, "lateral", "below 2.5 Hz"), (0.9, "longitudinal", "below 2.5 Hz")],
+)
+def test_a_mode_that_en_1990_alone_asks_for_needs_a_look(frequency: float, direction: str, words: str) -> None:
+    """Outside the ranges of EUR 23984 and Setra, reached by nobody: "no" would be against EN 1990."""
+    (row,) = rows(mode(frequency, direction=direction))
+    assert (row.gait, row.harmonic, row.eur, row.setra, row.streams) == ("", 0, "", "", ())
+    assert row.simulate
+    assert row.why.startswith(f"EN 1990: verification needed {words}")
+    assert "lies outside the ranges of EUR 23984 and Setra, and no stream reaches it" in row.why
+    assert row.why.endswith(f"{direction} forces are not simulated in this version") == (direction != "vertical")
+
+
+@pytest.mark.parametrize(("frequency", "direction"), [(5.001, "vertical"), (2.501, "lateral"), (5.001, "longitudinal")])
+def test_a_mode_in_nobodys_reach_needs_none(frequency: float, direction: str) -> None:
+    """5 Hz is Setra's longitudinal end, too, for the second harmonic."""
+    (row,) = rows(mode(frequency, direction=direction))
+    assert not row.simulate
+    assert "EN 1990" not in row.why
+    assert (row.eur, row.setra, row.en, row.streams) == ("", "", "", ())
 
 
 def test_a_mode_in_no_range() -> None:
@@ -117,7 +144,7 @@ def test_a_mode_in_no_range() -> None:
     assert (row.eur, row.setra, row.en, row.streams, row.simulate) == ("", "", "", (), False)
     assert "7.000 Hz lies outside the ranges of EUR 23984 and Setra" in row.why
     (slow,) = rows(mode(0.7))
-    assert not slow.simulate
+    assert slow.simulate
     assert "below 5 Hz" in slow.en
 
 
@@ -178,7 +205,48 @@ def test_joggers_and_walkers_stand_in_rows_of_their_own() -> None:
     paces = "pace = { mean = 2.6, sd = 0.15, min = 2.0, max = 3.2 }"
     run = f'gait = "jogging"\n{paces}\nspeed = 2.7\nload = {{ harmonics = [1.3] }}\n'
     found = rows(mode(2.4), stream(TOWN) + stream(run, "run", "{ per_hour = 30 }"))
-    assert {(r.gait, r.harmonic): r.streams for r in found} == {W1: ("town",), J1: ("run",)}
+    # 2.4 Hz is in the extended range of EUR 23984, but at twice no pace of the town
+    assert {(r.gait, r.harmonic): r.streams for r in found} == {W1: ("town",), W2: (), J1: ("run",)}
+
+
+RUN = """
+gait = "jogging"
+pace = { mean = 2.8, sd = 0.1, min = 2.4, max = 3.2 }
+speed = 2.7
+load = { harmonics = [1.3, 0.4, 0.1] }
+"""
+
+
+@pytest.mark.parametrize(
+    ("frequency", "named"),
+    [
+        (2.8, {W2: (), J1: ("run",)}),  # the second harmonic of slow walkers, by EUR 23984 and Setra
+        (5.6, {("jogging", 2): ("run",)}),  # above every range: twice 2.8 Hz
+        (8.4, {("jogging", 3): ("run",)}),
+        (11.2, {}),  # four times: the load has three harmonics
+    ],
+)
+def test_every_harmonic_of_a_load_is_looked_at(frequency: float, named: dict[tuple[str, int], tuple[str, ...]]) -> None:
+    found = rows(mode(frequency), stream(RUN, "run"))
+    assert {(r.gait, r.harmonic): r.streams for r in found if r.gait} == named
+    assert any(r.simulate for r in found) == bool(named)
+    for row in found:
+        assert ("within the pace of 'run'" in row.why) == bool(row.streams)
+
+
+def test_a_third_harmonic_of_walking_has_a_row() -> None:
+    """3 x 1.6 to 2.4 Hz: 5.7 Hz is beyond every range; joggers who reach nothing are not named."""
+    third = TOWN.replace("[0.4, 0.1]", "[0.4, 0.1, 0.1]")
+    (row,) = rows(mode(5.7), stream(third) + stream(RUN.replace("2.8, sd", "2.6, sd").replace("3.2", "2.7"), "run"))
+    assert (row.gait, row.harmonic, row.streams, row.simulate) == ("walking", 3, ("town",), True)
+    assert row.why == "within the pace of 'town'"
+
+
+def test_rows_come_in_the_order_of_the_harmonics_walkers_first() -> None:
+    """Both gaits at 4.8 Hz: walkers' second (1.6 to 2.4 Hz) and third, joggers' second (2.4 Hz and up)."""
+    third = TOWN.replace("[0.4, 0.1]", "[0.4, 0.1, 0.1]")
+    found = rows(mode(4.8), stream(RUN.replace("2.8, sd", "2.5, sd"), "run") + stream(third))
+    assert [(r.gait, r.harmonic) for r in found] == [W2, ("walking", 3), ("jogging", 2)]
 
 
 def test_streams_of_all_cases_count_once() -> None:
