@@ -288,7 +288,8 @@ def _stream(now: Situation, mode: Mode, share: float) -> Iterator[Method]:
         f"modal force of {number(density)} N2/Hz at {number(mode.frequency, 4)} Hz, flat over the mode's band",
     )
     differs = (
-        "other modes, and the force of a walker, which grows and fades",
+        "other modes, and the force of a walker, which grows and fades: up to some 7 % low for a mode just beyond the "
+        "end of the paces",
         "as the line above, and where the density of paces is not flat near the mode's frequency it can be far off",
     )
     for (rms_name, peak_name), sd, assumes, why in zip(kinds, (whole, narrow), assumed, differs, strict=True):
@@ -306,8 +307,12 @@ def _peak(now: Situation, mode: Mode, name: str, source: str, sd: float, share: 
     near = _in_band(now, mode)
     if near < FEW_IN_BAND or not sd:
         note = (
-            f"{number(near)} persons are in the half-power band of {mode.name} at a time: the response comes in "
-            f"bursts, and a Gaussian peak (below {FEW_IN_BAND:g} persons) would be far too low"
+            "nobody walks at exactly this pace"
+            if near >= FEW_IN_BAND
+            else (
+                f"{number(near)} persons are in the half-power band of {mode.name} at a time: the response comes in "
+                f"bursts, and a Gaussian peak (below {FEW_IN_BAND:g} persons) would be far too low"
+            )
         )
         return _method(now, mode, name, source, None, note=note)
     factor = narrow_band.vanmarcke(share, mode.frequency, mode.damping, now.window)

@@ -254,11 +254,13 @@ def _case(scenario: Scenario, case: Case) -> list[Finding]:
             f"{case.window:g} s is longer than the observed {case.duration:g} s: no whole window fits, so a target can "
             "be found not met but never met; make duration at least as long",
         )
-    if case.event and case.recorder.segments > 1:
+    if case.event and case.window < case.duration - 1e-9:
+        many = case.recorder.segments > 1
+        what = f"into {case.recorder.segments} windows that are not alike" if many else "and judges only its beginning"
         warn(
             "comfort.window",
-            f"{case.window:g} s cuts a record of given arrivals into {case.recorder.segments} windows that are not "
-            "alike: those in which nobody walks count in every probability; leave window out to judge the whole event",
+            f"{case.window:g} s cuts a record of given arrivals {what}: windows in which nobody walks count in every "
+            "probability, and what is left over in none; leave window out to judge the whole event",
         )
     if scenario.file.comfort.window is None and case.window < DEFAULT_WINDOW - 1e-9 and not case.event:
         warn(

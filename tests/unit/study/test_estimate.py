@@ -114,10 +114,10 @@ def one(found: Estimates, name: str, mode: str = "V1", harmonic: int | None = No
 # Random: p = 1/0.8 = 1.25 per Hz; S = 4.8 x 0.5 x (280^2/2) x 1.25 = 117 600 N2/Hz (no second harmonic is at 2 Hz);
 # sqrt(117 600 x pi x 2/(4 x 0.005)) = 6078.2; over 30 000: 0.20261 m/s2.
 # All paces: of the resonance's pi/(4 zeta) = 157.080 the skirts, from 1.6 to 2.4 Hz, leave less by what
-# r + r/(2 (1 - r^2)) + 0.75 ln|(1 - r)/(1 + r)| gains from r = 0.8 to 1.2: 0.4 - 2.47475 - 0.15050 = -2.22525. The second
-# harmonic, from 3.2 to 4.8 Hz, is beyond: from r = 1.6 to 2.4 it gains 0.8 + 0.26072 + 0.43428 = 1.49500, with
-# S = 4.8 x 0.5 x (70^2/2) x 1.25/2 = 3675 N2/Hz. 2 Hz x (117 600 x 154.855 + 3675 x 1.49500) = 36 432 900; root 6035.97;
-# over 30 000: 0.20120 m/s2.
+# r + r/(2 (1 - r^2)) + 0.75 ln|(1 - r)/(1 + r)| gains from r = 0.8 to 1.2: 0.4 - 2.47475 - 0.15050 = -2.22525. The
+# second harmonic, from 3.2 to 4.8 Hz, is beyond: from r = 1.6 to 2.4 it gains 0.8 + 0.26072 + 0.43428 = 1.49500, with
+# S = 4.8 x 0.5 x (70^2/2) x 1.25/2 = 3675 N2/Hz. 2 Hz x (117 600 x 154.855 + 3675 x 1.49500) = 36 432 900; its root
+# 6035.97; over 30 000: 0.20120 m/s2.
 # Sag: (18/2)^2 = 81 mm.
 BY_HAND = {
     STEADY: 0.93333,
