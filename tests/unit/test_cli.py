@@ -25,9 +25,10 @@ from crowdsim.cli import main
 from crowdsim.console.base import CAUTION
 from crowdsim.plots.draw import FIGURES
 from crowdsim.results.sensitivity import read_sensitivity
-from crowdsim.scenario.reader import read_scenario
+from crowdsim.scenario.reader import parse_scenario, read_scenario
 from crowdsim.study.compare import compare_file
 from crowdsim.study.estimate import estimate
+from crowdsim.study.simulate import simulate
 
 ROOT = Path(__file__).resolve().parents[2]
 SCENARIOS = sorted((ROOT / "scenarios").glob("*.toml"))
@@ -241,14 +242,14 @@ def test_the_summary_of_a_run_says_what_a_report_needs(simulated: Callable[[str]
     assert run.out.rstrip().splitlines()[-1].startswith(f"Results: {run.path} (seed 7, ")
 
 
-def test_estimate() -> None:
+def test_estimate(here: Here) -> None:
     path = scenario_of("weekday-commuters")
     run = crowdsim("estimate", path)
     assert (run.returncode, run.stderr) == (0, "")
     for words in ("Which modes lie in reach", "Case weekday morning", "Case quiet noon", "Hand formulas",
                   "What they stand for", CAUTION):  # fmt: skip
         assert words in joined(run.stdout)
-    data = no_nan(crowdsim("estimate", path, "--json").stdout)
+    data = no_nan(here("estimate", path, "--json").out)
     keys = {"name", "source", "case", "direction", "measure", "value", "unit", "mode", "stands_for", "assumes"}
     assert all(keys <= set(m) for m in data["methods"])
     assert {m["case"] for m in data["methods"]} == {"weekday morning", "quiet noon"}
@@ -265,7 +266,7 @@ def test_estimate_of_every_scenario_and_case(here: Here, scenario: Path) -> None
         assert [n for n in names if f"Case {n}\n" in ended.out] == [name]
 
 
-def test_compare(simulated: Callable[[str], Run]) -> None:
+def test_compare(here: Here, simulated: Callable[[str], Run]) -> None:
     path = simulated("weekday-commuters").path
     run = crowdsim("compare", path)
     assert (run.returncode, run.stderr) == (0, "")
@@ -274,7 +275,7 @@ def test_compare(simulated: Callable[[str], Run]) -> None:
                   "What they stand for, and why they differ", "Which modes lie in reach", CAUTION):  # fmt: skip
         assert words in joined(run.stdout)
     assert "Law fitted" not in run.stdout
-    data = no_nan(crowdsim("compare", path, "--json").stdout)
+    data = no_nan(here("compare", path, "--json").out)
     assert data == json.loads(json.dumps(compare_file(path).as_dict()))
     assert (data["fits"], data["sensitivities"]) == ([], [])
 
@@ -336,6 +337,30 @@ def test_plot_of_a_point(here: Here, walker: Path) -> None:
     for out in (first, second):
         assert here("plot", walker, "history", "--out", out, "--point", out.stem).status == 0
     assert first.read_bytes() != second.read_bytes()
+
+
+@pytest.fixture(scope="module")
+def rare(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """One or two of 80 realisations move at all: the 95 % value is 0 everywhere, the largest is not."""
+    text = bad(scenario_of("weekday-commuters").read_text(encoding="utf-8"), "per_hour = 200", "per_hour = 0.1")
+    path = tmp_path_factory.mktemp("rare") / "rare.h5"
+    simulate(parse_scenario(text, "rare.toml"), out=path, realisations=80, case="quiet noon")
+    peak = compare_file(path).summary.cases[0].deck[0].peak
+    assert peak.p95.value == 0.0 < peak.largest
+    return path
+
+
+@pytest.mark.parametrize("figure", FIGURES)
+def test_figures_of_a_run_in_which_hardly_anybody_walks(here: Here, rare: Path, tmp_path: Path, figure: str) -> None:
+    """Drawn, or refused in words."""
+    out = tmp_path / "figure.svg"
+    ended = here("plot", rare, figure, "--out", out)
+    if ended.status == 0:
+        assert out.stat().st_size > 5000
+    else:
+        assert ended.status == 2
+        assert "nothing to draw" in ended.err
+        assert not out.exists()
 
 
 def test_sensitivity_is_drawn_and_kept_and_compare_says_what_matters_most(here: Here, walker: Path) -> None:
