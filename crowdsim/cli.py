@@ -183,9 +183,10 @@ def sensitivity(
         cases_for(into, read.text)
     if out is not None:
         from crowdsim.plots.save import check_place, check_width
+        from crowdsim.plots.sensitivity import NARROWEST
 
         check_place(out)
-        check_width(width)
+        check_width(width, NARROWEST)
     with RunProgress(console) as progress:
         result = study(read, case=case, realisations=realisations, seed=seed, workers=workers, progress=progress)
     show(console, result)

@@ -13,6 +13,8 @@ import matplotlib.pyplot as plt
 import numpy as np
 
 import crowdsim
+from crowdsim.response.statistics import percentile
+from crowdsim.results.texts import span
 
 SCENARIO = Path(__file__).parent.parent / "scenarios" / "market-day.toml"
 
@@ -27,7 +29,9 @@ def main(figure: str = "market-day.png", realisations: int = 60) -> None:
     middle = case.envelope["vertical"][:, 1, :]
     along.plot(case.deck_s, np.median(middle, axis=0), color="tab:blue", lw=2.5, label="median, centre line")
     along.set(xlabel="place along the deck s, m", ylabel="peak acceleration, m/s2", ylim=(0, None))
-    along.set_title(f"{scenario.title}\n{case.realisations} realisations of 15 min", fontsize=10)
+    along.set_title(
+        f"{scenario.title}\n{case.realisations} realisations of {span(case.attributes['duration'])}", fontsize=10
+    )
     along.legend(frameon=False)
 
     number = max(case.histories, key=lambda k: case.peak[k].max())
@@ -39,7 +43,12 @@ def main(figure: str = "market-day.png", realisations: int = 60) -> None:
     history.set(xlabel="time, s", ylabel="acceleration, m/s2")
     history.set_title(f"realisation {number}, point {case.points.name[at]}, 30 s either side of the peak", fontsize=10)
     fig.savefig(figure, dpi=150)
-    print(f"{figure}: 95 % peak {np.quantile(case.peak[:, at], 0.95):.2f} m/s2 at {case.points.name[at]}")
+    value = percentile(case.peak[:, at])
+    sure = "no interval" if value.low is None else f"95 % confidence interval {value.low:.2f} to {value.high:.2f}"
+    print(
+        f"{figure}: 95 % value of the peak in the observed {span(case.attributes['duration'])} at "
+        f"{case.points.name[at]}: {value.value:.2f} m/s2 ({sure})"
+    )
 
 
 if __name__ == "__main__":

@@ -8,6 +8,9 @@ from typing import Any
 
 from crowdsim.console.base import Console
 from crowdsim.console.screening import screening
+from crowdsim.guides.catalogue import CRITERIA
+from crowdsim.results.judgement import LOADED
+from crowdsim.results.judgement import asked as asked_of
 from crowdsim.results.texts import number, span
 from crowdsim.study.executor import default_workers
 from crowdsim.study.prepare import Case
@@ -27,6 +30,8 @@ def check(console: Console, plan: Plan) -> None:
         return
     model = plan.cases[0].bare
     console.heading(plan.scenario.title)
+    if plan.scenario.file.scenario.note:
+        console.line(plan.scenario.file.scenario.note)
     console.out.print(f"Deck {number(model.length)} m long, {number(model.width)} m wide")
     rows = []
     for m in model.modes:
@@ -53,6 +58,7 @@ def _case(console: Console, plan: Plan, case: Case) -> None:
     console.heading(f"Case {case.name}")
     density = case.persons / (case.bare.length * case.bare.width)
     console.out.print(f"{number(case.persons)} persons on the deck on average, {number(density)} per m2")
+    console.line(_asked(case))
     rows = [
         [s.walkers.name, s.walkers.pace.text("Hz"), f"{number(1.0 / s.inverse_speed)} m/s",
          s.walkers.weight.text("N"), s.load.name, number(s.persons)]
@@ -82,6 +88,22 @@ def _case(console: Console, plan: Plan, case: Case) -> None:
     from crowdsim.study.assumptions import assumptions
 
     console.items("Assumed", assumptions(plan.scenario, case))
+
+
+def _asked(case: Case) -> str:
+    criterion = CRITERIA[case.criterion]
+    asked = {"name": case.name, "criterion": case.criterion, "target": case.target, "limit": case.limit}
+    wants = [
+        f"{direction} {number(limit.limit)} m/s2 ({limit.words})"
+        for direction in case.model.directions
+        if direction in LOADED
+        and (limit := asked_of({k: v for k, v in asked.items() if v is not None}, direction)).limit is not None
+    ]
+    kind = "classes" if criterion.classes else "limits"
+    return (
+        f"Asked: {', '.join(wants) or 'no limit'}; {kind} of {criterion.title}; peaks in {span(case.window)}; seed "
+        f"{case.seed}"
+    )
 
 
 def _ordinal(factor: int) -> str:

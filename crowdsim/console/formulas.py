@@ -6,8 +6,8 @@ from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
 from crowdsim.console.base import Console, interval_text, or_dash
-from crowdsim.results.texts import number
-from crowdsim.study.estimate import Method
+from crowdsim.results.texts import number, span
+from crowdsim.study.estimate import PEAK, STEADY, WEIGHTS, Method
 
 if TYPE_CHECKING:  # `estimate` answers at once: nothing that opens a results file is loaded for it
     from crowdsim.study.compare import Compared
@@ -57,15 +57,32 @@ def meanings(methods: Sequence[Method]) -> list[str]:
 
 def beside(console: Console, rows: Sequence[Compared], *, title: str) -> None:
     """Formula, simulated, ratio with its interval."""
+    steady = {(r.method.mode, r.method.harmonic): r.method.value for r in rows if r.method.name == STEADY}
+    same = [r for r in rows if r.method.name in _ALIKE and _near(steady.get((r.method.mode, r.method.harmonic)), r)]
     cells = [
-        [r.method.name, r.method.mode, harmonic(r.method), or_dash(r.method.value), or_dash(r.simulated),
-         "-" if r.ratio is None else f"{number(r.ratio)}", interval_text(r.ratio_low, r.ratio_high)]
+        [r.method.name, r.method.mode, harmonic(r.method), _who(r.method), or_dash(r.method.value),
+         or_dash(r.simulated), "-" if r.ratio is None else f"{number(r.ratio)}",
+         interval_text(r.ratio_low, r.ratio_high)]
         for r in rows
-        if r.method.value is not None
+        if r.method.value is not None and r not in same
     ]  # fmt: skip
-    columns = [("formula", "l"), ("mode", "k"), ("harmonic", "k"), ("gives, m/s2", "r"), ("simulated", "r"),
-               ("ratio", "r"), ("its 95 % interval", "r")]  # fmt: skip
-    console.table(title, columns, cells, spare=("its 95 % interval", "harmonic", "mode"))
+    columns = [("formula", "l"), ("mode", "k"), ("harmonic", "k"), ("who", "l"), ("gives, m/s2", "r"),
+               ("simulated", "r"), ("ratio", "r"), ("its 95 % interval", "r")]  # fmt: skip
+    console.table(title, columns, cells, spare=("who", "its 95 % interval", "harmonic", "mode"))
+    windows = {r.method.window for r in rows if r.method.measure == PEAK and r.ratio is not None}
+    time = f" in {span(windows.pop())}" if len(windows) == 1 else ""
+    console.line(
+        f"Simulated: for a peak, that judged above, of the whole deck and all modes{time}; for an rms, that of all "
+        "modes over all realisations where the mode moves most."
+        + (" By weights with C = 1 or 2: the same as the steady state." if same else "")
+    )
+
+
+_ALIKE = (WEIGHTS.format("1"), WEIGHTS.format("2"))
+
+
+def _near(value: float | None, row: Compared) -> bool:
+    return value is not None and row.method.value is not None and abs(row.method.value / value - 1.0) < 1e-9
 
 
 def reasons(rows: Sequence[Compared]) -> list[str]:

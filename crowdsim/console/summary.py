@@ -18,19 +18,24 @@ def summary(console: Console, comparison: Comparison, *, json: bool = True) -> N
     if console.quiet:
         return
     console.heading(said.title)
+    missing = verdicts.incomplete(comparison)
+    if missing:
+        console.heading(missing)
     console.items("Findings", said.findings)
     shared = [a for a in said.cases[0].assumptions if all(a in c.assumptions for c in said.cases)]
+    if len(said.cases) > 1:
+        console.line()
+        verdicts.table(console, said.cases)
     for case in said.cases:
         _case(console, comparison, case, [a for a in case.assumptions if a not in shared])
     console.line()
-    if len(said.cases) > 1:
-        verdicts.table(console, said.cases)
-        console.line()
     for line in not_varied(comparison):
         console.line(line)
     console.items("Assumed" if len(said.cases) == 1 else "Assumed in every case", shared)
     console.line()
     console.line(CAUTION)
+    if missing:
+        console.heading(missing)
     console.out.print(f"Results: {said.file} (seed {said.seed}, crowdsim {said.version})", soft_wrap=True)
 
 
@@ -59,7 +64,7 @@ def _case(console: Console, comparison: Comparison, case: CaseSummary, own: list
         shifted = ", ".join(f"{m['name']} at {number(m['frequency'], 4)} Hz" for m in mass)
         console.line(f"With the people's mass: {shifted}.")
     for deck in case.deck:
-        _direction(console, deck, case.duration)
+        _direction(console, deck, case)
     points(console, case)
     rows = comparison.leading(case.name)
     if rows:
@@ -67,7 +72,7 @@ def _case(console: Console, comparison: Comparison, case: CaseSummary, own: list
     console.items("Assumed", own)
 
 
-def _direction(console: Console, deck: DeckSummary, duration: float) -> None:
+def _direction(console: Console, deck: DeckSummary, case: CaseSummary) -> None:
     if deck.judgement is None:
         if deck.peak.largest == 0.0:
             console.line(f"No {deck.direction} response: no force acts in that direction in this version.")
@@ -84,10 +89,10 @@ def _direction(console: Console, deck: DeckSummary, duration: float) -> None:
     if not deck.judgement.whole:
         p = deck.peak.p95
         console.line(
-            f"Over the whole {span(duration)} the 95 % value is {number(p.value)} m/s2 (95 % confidence interval "
+            f"Over the whole {span(case.duration)} the 95 % value is {number(p.value)} m/s2 (95 % confidence interval "
             f"{interval_text(p.low, p.high)})."
         )
-    console.line(f"The deck moves most at s = {number(deck.s)} m, e = {number(deck.e)} m.")
+    console.line(verdicts.place(deck, case.lines))
 
 
 def points(console: Console, case: CaseSummary) -> None:
@@ -98,12 +103,12 @@ def points(console: Console, case: CaseSummary) -> None:
         rows.append(
             [point.name, number(point.s), number(point.e), point.direction, number(p.mean), or_dash(p.sd),
              number(p.median), number(p.p95.value), interval_text(p.p95.low, p.p95.high), number(p.largest),
-             number(point.rms.mean), number(point.running_rms_max.p95.value)]
+             number(point.rms_of_all.value), number(point.running_rms_max.p95.value)]
         )  # fmt: skip
     columns = [("at", "k"), ("s, m", "r"), ("e, m", "r"), ("direction", "k"), ("mean", "r"), ("sd", "r"),
                ("median", "r"), ("95 % value", "r"), ("its 95 % interval", "r"), ("largest", "r"),
-               ("RMS, mean", "r"), ("1 s RMS, 95 %", "r")]  # fmt: skip
+               ("RMS", "r"), ("1 s RMS, 95 %", "r")]  # fmt: skip
     console.table(
         f"Peak acceleration of all modes together in {span(case.duration)}, m/s2, where each mode moves most",
-        columns, rows, spare=("median", "sd", "1 s RMS, 95 %", "RMS, mean", "mean", "direction", "largest", "e, m"),
+        columns, rows, spare=("median", "sd", "1 s RMS, 95 %", "RMS", "mean", "direction", "largest", "e, m"),
     )  # fmt: skip

@@ -3,12 +3,29 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from typing import TYPE_CHECKING
 
 from crowdsim.console.base import Console, interval_text
 from crowdsim.results.judgement import Judgement
-from crowdsim.results.summary import CaseSummary
+from crowdsim.results.summary import CaseSummary, DeckSummary
 from crowdsim.results.texts import number, percent, span
 from crowdsim.results.wording import buys, class_text
+
+if TYPE_CHECKING:
+    from crowdsim.study.compare import Comparison
+
+
+def incomplete(comparison: Comparison) -> str:
+    """What is missing in a run that was stopped; empty for a whole one."""
+    said = comparison.summary
+    if said.complete:
+        return ""
+    there = {c.name for c in said.cases}
+    missing = [now.name for now in comparison.estimates.situations if now.name not in there]
+    text = (
+        f"INCOMPLETE: {', '.join(f'{c.realisations:,} of {said.asked:,} realisations of {c.name}' for c in said.cases)}"
+    )
+    return text + (f"; not simulated: {', '.join(missing)}" if missing else "") + "."
 
 
 def verdict(console: Console, judged: Judgement) -> None:
@@ -59,6 +76,16 @@ def chances_text(judged: Judgement) -> str:
     return ", ".join(f"{name} {percent(p.value)}" for name, p in judged.chances if p.value > 0.0) or "-"
 
 
+def place(deck: DeckSummary, lines: int) -> str:
+    """Where the deck moves most, as far as this run can tell."""
+    low, high = deck.s_within
+    text = f"In this run the deck moves most at s = {number(deck.s)} m, e = {number(deck.e)} m"
+    if high > low or len(deck.e_within) > 1:
+        on = "" if lines == 1 else f" on e = {', '.join(number(e) for e in deck.e_within)} m"
+        text += f"; the 95 % value lies within the interval of that from s = {number(low)} to {number(high)} m{on}"
+    return text + "."
+
+
 def asked_text(judged: Judgement) -> str:
     """What the case asks."""
     if judged.limit is None:
@@ -70,4 +97,6 @@ def verdict_text(judged: Judgement) -> str:
     """The verdict in short."""
     if judged.verdict is None:
         return "-"
-    return f"undecided (about {judged.needed:,} may)" if judged.needed is not None else judged.verdict
+    return (
+        f"undecided; about {judged.needed:,} realisations may decide" if judged.needed is not None else judged.verdict
+    )

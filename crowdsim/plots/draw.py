@@ -138,4 +138,6 @@ def _foot(results: Results, case: CaseResults) -> str:
     title = tomllib.loads(results.scenario).get("scenario", {}).get("title", "untitled")
     count = case.realisations
     of = f"{count:,} realisation{'s' if count != 1 else ''}"
+    if not results.run.get("complete", True):
+        of = f"INCOMPLETE, {count:,} of {results.run.get('asked', 0):,} realisations"
     return f"{title} \u00b7 case {case.name} \u00b7 seed {results.seed} \u00b7 {of} \u00b7 crowdsim {results.version}"

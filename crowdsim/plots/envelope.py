@@ -66,6 +66,9 @@ def envelope(
     count = f"{case.realisations:,} realisation{'s' if case.realisations > 1 else ''}"
     time = span(float(case.attributes["duration"]))
     title = f"{what}: largest in the observed {time}, {count}"
+    window = float(case.attributes["window"])
+    if window < float(case.attributes["duration"]) - 1e-9:
+        title += f". Classes and limits speak of {span(window)}, in which peaks are lower"
     beside = width >= NARROW
     rows, columns = (1, len(lines)) if beside else (len(lines), 1)
     fig = figure(width, 76.0 if beside else max(62.0, 48.0 * len(lines)), title, foot)

@@ -81,7 +81,7 @@ def history(
         raise ResultsError(f"case {case.name!r}: the response at {case.points.name[place]!r} is 0: nothing to draw")
     title = (
         f"{case.points.direction[place].capitalize()} acceleration at point {case.points.name[place]} "
-        f"({_place(case, place)}), realisation {number_of}"
+        f"({_place(case, place)}), realisation {number_of}{_why(case, number_of)}"
     )
     peak, at = float(case.peak[number_of, place]), float(case.peak_time[number_of, place])
     if ax is not None:
@@ -126,6 +126,13 @@ def _kept(case: CaseResults, time: Floats, dt: float) -> str:
     if time[0] > warm_up + dt:
         return f"of {number(warm_up)} to {number(warm_up + float(case.attributes['duration']))} s, about the peak"
     return f"observed time begins at {number(warm_up)} s"
+
+
+def _why(case: CaseResults, number_of: int) -> str:
+    """Which of the kept realisations it is."""
+    if case.realisations == 1:
+        return ""
+    return ", that with the largest peak of all points" if number_of == int(case.peak.max(axis=1).argmax()) else ""
 
 
 def _place(case: CaseResults, place: int) -> str:

@@ -167,7 +167,7 @@ def _deck(ax: Axes, case: Case, crowd: Crowd, width: float) -> Labels:
     area = case.model.length * case.model.width
     labels.line(
         np.full(30, mean), np.linspace(0.05, 0.98, 30) * height,
-        f"mean {number(mean)}\n({number(mean / area, 2)} persons/m\u00b2)",
+        f"mean of these {number(mean)}\n({number(mean / area, 2)} persons/m\u00b2)",
     )  # fmt: skip
     room = max(0.06 * (last - first), 1.5)
     ax.set_xlim(max(first - room, -0.7), edges[-1] - 1.0 + room)

@@ -25,10 +25,10 @@ def check_place(place: Path) -> None:
         raise ResultsError(f"{place}: there is no folder {place.parent}; make it first")
 
 
-def check_width(width: float) -> None:
-    """Raises ResultsError for a width [mm] at which no figure can be read."""
-    if not NARROWEST <= width <= WIDEST:
-        raise ResultsError(f"width {width:g} mm: {NARROWEST:g} to {WIDEST:g} mm are possible")
+def check_width(width: float, least: float = NARROWEST) -> None:
+    """Raises ResultsError for a width [mm] at which the figure cannot be read."""
+    if not least <= width <= WIDEST:
+        raise ResultsError(f"width {width:g} mm: {least:g} to {WIDEST:g} mm are possible")
 
 
 def save(ax: Axes, place: Path, title: str) -> None:

@@ -35,6 +35,7 @@ ROW = 3.7  # mm a line
 GAP = 0.45  # lines between subjects
 LEAST_REACH = 5.0  # per cent either side of the base that the axis shows at least
 NUMBER = 13.0  # mm for a change and the gap before it
+NARROWEST = 110.0  # mm, for the labels beside the bars
 LABEL_SHARE = 0.34  # of the figure's width, for the labels
 BOLD = 1.12  # bold type is wider
 _POINT = 25.4 / 72.0  # mm
@@ -72,7 +73,7 @@ def draw_sensitivity(result: Sensitivity, out: str | Path, *, width: float = WID
     """
     place = Path(out)
     check_place(place)
-    check_width(width)
+    check_width(width, NARROWEST)
     with styled():
         save(sensitivity(result, width=width), place, f"{result.title}, {result.case}: sensitivity")
     return place

@@ -89,9 +89,9 @@ def asked(attributes: dict[str, Any], direction: str, limit: float | None = None
     criterion = CRITERIA[str(attributes["criterion"])]
     target = str(attributes["target"]) if "target" in attributes else None
     if limit is not None:
-        return Asked(criterion, None, limit, "given")
+        return Asked(criterion, None, limit, "as specified")
     if "limit" in attributes:
-        return Asked(criterion, None, float(attributes["limit"]), "the owner's")
+        return Asked(criterion, None, float(attributes["limit"]), "as specified")
     if target is not None:
         bound = criterion.limit(direction, target)
         return Asked(criterion, target, bound, f"upper bound of {target}, {criterion.title}")

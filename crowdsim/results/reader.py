@@ -100,6 +100,8 @@ def open_file(path: str | Path) -> Any:
     try:
         file = h5py.File(path, "r")
     except OSError as error:
+        if str(path).lower().endswith(".toml"):
+            raise ResultsError(f"{path}: a scenario, no results file; run simulate first") from None
         raise ResultsError(f"{path}: no HDF5 file, or a damaged one ({error})") from None
     if file.attrs.get("format") != FORMAT:
         file.close()

@@ -51,20 +51,23 @@ class PointSummary:
 class DeckSummary:
     """The largest peak anywhere on the deck in one direction.
 
-    s, e : where the 95 % value of the peak is largest
+    s, e : where the 95 % value of the peak is largest in this run; s_within, e_within: from where to where along the
+    deck, and on which lines, it lies within the interval of that
     judgement : class and verdict; None in a direction in which no force acts
     """
 
     direction: str
     s: float
     e: float
+    s_within: tuple[float, float]
+    e_within: tuple[float, ...]
     peak: Distribution1D
     judgement: Judgement | None
 
 
 @dataclass(frozen=True)
 class CaseSummary:
-    """One case in numbers."""
+    """One case in numbers. lines : along the deck, on which the response was sought."""
 
     name: str
     realisations: int
@@ -74,6 +77,7 @@ class CaseSummary:
     target: str | None
     limit: float | None
     persons_on_deck: float
+    lines: int
     crossings_mean: float
     points: tuple[PointSummary, ...]
     deck: tuple[DeckSummary, ...]
@@ -83,7 +87,7 @@ class CaseSummary:
 
 @dataclass(frozen=True)
 class Summary:
-    """A run in numbers."""
+    """A run in numbers. complete, asked : whether it was finished, and how many realisations were asked for."""
 
     title: str
     seed: int
@@ -91,6 +95,8 @@ class Summary:
     file: str
     findings: tuple[str, ...]
     cases: tuple[CaseSummary, ...]
+    complete: bool
+    asked: int
 
     def as_dict(self) -> dict[str, Any]:
         """For JSON."""
@@ -111,6 +117,8 @@ def summarise(path: str | Path, title: str, *, percentile: float = 0.95, limit: 
             file=str(path),
             findings=tuple(json.loads(file.attrs["findings"])),
             cases=tuple(_case(file["cases"][k], question) for k in sorted(file["cases"], key=int)),
+            complete=bool(file["run"].attrs.get("complete", True)),
+            asked=int(file["run"].attrs.get("asked", 0)),
         )
 
 
@@ -128,6 +136,7 @@ def _case(group: Any, question: Question) -> CaseSummary:
         target=str(group.attrs["target"]) if "target" in group.attrs else None,
         limit=float(group.attrs["limit"]) if "limit" in group.attrs else None,
         persons_on_deck=float(group.attrs["persons_on_deck"]),
+        lines=int(group["deck/e"].shape[0]),
         crossings_mean=float(np.mean(rows["crossings"][()])),
         points=tuple(_point(group, question, i, names[i], directions[i]) for i in range(len(names))),
         deck=tuple(
@@ -164,18 +173,22 @@ def _deck(direction: str, group: Any, question: Question) -> DeckSummary:
     data = deck[direction]["peak_envelope"]
     count, across, along = data.shape
     largest = np.zeros(count)
-    best, where = -1.0, (0, 0)
     rank = percentile_rank(count, 0.95) - 1
+    values = np.zeros((across, along))
     columns = max(1, _SLAB // max(count, 1))
     for e in range(across):
         for s in range(0, along, columns):
             slab = data[:, e, s : s + columns]
             largest = np.maximum(largest, slab.max(axis=1))
-            values = np.partition(slab, rank, axis=0)[rank]
-            j = int(np.argmax(values))
-            if values[j] > best:
-                best, where = float(values[j]), (e, s + j)
+            values[e, s : s + columns] = np.partition(slab, rank, axis=0)[rank]
+    i, j = np.unravel_index(int(np.argmax(values)), values.shape)
+    low = describe(data[:, int(i), int(j)]).p95.low
+    lines, places = np.nonzero(values >= (values[i, j] if low is None else low))
+    s, e = deck["s"][()], deck["e"][()]
     judged = None
     if direction in LOADED:
         judged = judge(dict(group.attrs), direction, deck[direction]["window_peak"][()], largest, question)
-    return DeckSummary(direction, float(deck["s"][where[1]]), float(deck["e"][where[0]]), describe(largest), judged)
+    return DeckSummary(
+        direction, float(s[j]), float(e[i]), (float(s[places].min()), float(s[places].max())),
+        tuple(float(x) for x in e[np.unique(lines)]), describe(largest), judged,
+    )  # fmt: skip

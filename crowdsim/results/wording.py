@@ -31,6 +31,10 @@ def sentence(found: Judgement) -> str:
     )
     if found.verdict is None:
         return text + "."
+    if found.value.low is None:
+        least = least_for_interval(found.value.share)
+        limit = f"{number(found.limit or 0.0)} m/s2 ({found.limit_words})"
+        return f"{text}; no verdict on the limit of {limit} below {least} realisations."
     state = {"met": "is met", "not met": "is not met"}.get(
         found.verdict, "is neither shown to be met nor to be exceeded"
     )
@@ -83,7 +87,12 @@ def note(found: Judgement, criterion: Criterion) -> str:
         notes.append(f"so few windows that their largest stands for the {share} value, which may well be higher")
     if found.class_name is None and criterion.classes and found.direction in criterion.bounds:
         notes.append("a class goes with the 95 % value")
-    if found.verdict == "undecided" and not found.short and found.exceedance is not None:
+    if (
+        found.verdict == "undecided"
+        and not found.short
+        and found.value.low is not None
+        and found.exceedance is not None
+    ):
         notes.append(_undecided(found, percent(found.exceedance.value), percent(1.0 - found.value.share)))
     return "; ".join(notes)
 

@@ -45,6 +45,10 @@ def read_scenario(path: str | Path) -> Scenario:
     """Reads and validates a scenario file. Raises InputError with every problem."""
     source = str(path)
     try:
+        with open(path, "rb") as begin:
+            if begin.read(8) == b"\x89HDF\r\n\x1a\n":
+                hint = "crowdsim compare, plot; a scenario is a TOML file"
+                raise InputError(source, [Problem("", "is a results file, no scenario", hint)])
         size = Path(path).stat().st_size
         if size > _LARGEST_FILE:
             raise InputError(source, [Problem("", f"{size / 1e6:.0f} MB", "a scenario is a text of some kilobytes")])

@@ -193,7 +193,7 @@ class PointTable(Table):
 class RunTable(Table):
     """How much is simulated, and how."""
 
-    duration: Annotated[Time, Field(ge=1, le=1e7)] = Field(900.0, description="observed time [s]")
+    duration: Annotated[Time, Field(ge=1, le=1e7)] = Field(960.0, description="observed time [s]")
     realisations: int = Field(200, ge=1, le=10_000_000, strict=True)
     seed: int = Field(1, ge=0, lt=2**63, strict=True)
     time_step: Annotated[Time, Field(ge=1e-4, le=0.1)] | None = Field(None, description="1/n s; default chosen")

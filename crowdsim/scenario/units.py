@@ -103,6 +103,10 @@ def parse(kind: str, value: object, notes: list[str] | None = None) -> float:
     return _convert(kind, value, number, text or "dimensionless", target, notes, allowed)
 
 
+def _article(word: str) -> str:
+    return "an" if word[0] in "aeiou" else "a"
+
+
 def _mass_taken(given: str, newton: float, notes: list[str] | None) -> None:
     if notes is not None:
         notes.append(f"weight {given!r} taken as {newton:.4g} N (times {GRAVITY} m/s2)")
@@ -132,7 +136,7 @@ def _convert(
     except UnitError:
         raise
     except pint.DimensionalityError:
-        raise UnitError(f"{given!r} is of the wrong kind for a {kind}", allowed) from None
+        raise UnitError(f"{given!r} is of the wrong kind for {_article(kind)} {kind}", allowed) from None
     except Exception:
         raise UnitError(f"{given!r}: unknown unit", allowed) from None
     if not math.isfinite(result):

@@ -12,7 +12,18 @@ from crowdsim.results.reader import open_file
 from crowdsim.results.sensitivity import Sensitivity, read_sensitivity
 from crowdsim.results.summary import CaseSummary, PointSummary, Summary, summarise
 from crowdsim.scenario.reader import Scenario, parse_scenario
-from crowdsim.study.estimate import CROSSING, PEAK, RMS, SQUARE_ROOT, STEADY, STREAM_PEAK, Estimates, Method, estimate
+from crowdsim.study.estimate import (
+    CROSSING,
+    PEAK,
+    RMS,
+    SQUARE_ROOT,
+    STEADY,
+    STREAM_PEAK,
+    STREAM_SD,
+    Estimates,
+    Method,
+    estimate,
+)
 from crowdsim.study.situation import Situation
 
 
@@ -51,7 +62,10 @@ class Comparison:
         return tuple(r for r in self.rows if r.method.case == case)
 
     def leading(self, case: str) -> tuple[Compared, ...]:
-        """Those of the mode at whose antinode the peak is largest, with the harmonic of the largest crossing."""
+        """Those of the mode at whose antinode the peak is largest, with the harmonic of the largest crossing.
+
+        And what the random stream gives of every other mode.
+        """
         said = next((c for c in self.summary.cases if c.name == case), None)
         now = next((s for s in self.estimates.situations if s.name == case), None)
         if said is None or now is None:
@@ -67,13 +81,15 @@ class Comparison:
             return ()
         top = max((r.method for r in here if r.method.mode == mode and r.method.harmonic), key=_crossing, default=None)
         same = (None, "") if top is None else (top.harmonic, top.stream)
-        return tuple(
+        own = [
             r
             for r in self.of(case)
             if (r.method.mode, r.method.direction) == (mode, "vertical")
             and r.method.measure in (PEAK, RMS)
             and (r.method.harmonic is None or (r.method.harmonic, r.method.stream) == same)
-        )
+        ]
+        others = [r for r in self.of(case) if r.method.name == STREAM_SD and r.method.mode != mode]
+        return (*own, *others)
 
     def as_dict(self) -> dict[str, Any]:
         """For JSON."""
@@ -103,7 +119,7 @@ MARKED = {
 def marks(comparison: Comparison, case: str) -> list[tuple[str, float]]:
     """Formulas worth a mark on a figure of the peak, [m/s2]."""
     return [
-        (MARKED[r.method.name], r.method.value)
+        (f"{MARKED[r.method.name]}, {r.method.mode}", r.method.value)
         for r in comparison.leading(case)
         if r.method.name in MARKED and r.method.value is not None
     ]

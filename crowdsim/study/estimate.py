@@ -48,6 +48,7 @@ class Method:
 
     value : None where the formula gives no number; `note` then says why
     stands_for, assumes : what the number is; why : how it differs from a simulation of the case
+    window : of the peaks that it is compared with [s]
     """
 
     name: str
@@ -64,6 +65,7 @@ class Method:
     assumes: str
     why: str
     note: str
+    window: float
 
 
 @dataclass(frozen=True)
@@ -133,7 +135,7 @@ def _case(now: Situation, share: float) -> Iterator[Method]:
 def _method(now: Situation, mode: Mode, name: str, source: str, value: float | None, **other: Any) -> Method:
     given: dict[str, Any] = {
         "direction": "vertical", "measure": PEAK, "unit": "m/s2", "stream": "", "harmonic": None, "stands_for": "",
-        "assumes": "", "why": "", "note": "",
+        "assumes": "", "why": "", "note": "", "window": now.window,
     }  # fmt: skip
     return Method(name=name, source=source, case=now.name, mode=mode.name, value=value, **{**given, **other})
 

@@ -82,7 +82,7 @@ def _only(scenario: Scenario, case: str | None) -> str | None:
     names = [t.name for t in cases(scenario)]
     if case is None and len(names) > 1:
         raise InputError(
-            scenario.source, [Problem("case", f"{len(names)} cases", f"name one of them: {', '.join(names)}")]
+            scenario.source, [Problem("case", f"{len(names)} cases", f"name one with --case: {', '.join(names)}")]
         )
     return case
 
