@@ -281,21 +281,22 @@ def test_compare(here: Here, simulated: Callable[[str], Run]) -> None:
 
 
 def test_compare_with_another_percentile_and_limit(here: Here, simulated: Callable[[str], Run]) -> None:
-    """80 realisations of three windows: the 90 % value is the 216th of 240."""
+    """80 realisations of four windows: the 90 % value is the 288th of 320."""
     path = simulated("weekday-commuters").path
     with h5py.File(path) as file:
         peaks = sorted(file["cases/0/deck/vertical/window_peak"][()].ravel())
+    assert len(peaks) == 320
     asked = ("compare", path, "--percentile", 0.9, "--limit", 0.8)
     ended = here(*asked)
     assert ended.status == 0
     assert "the 90 % value of the peak vertical acceleration anywhere on the deck in 4 min" in joined(ended.out)
-    assert "the limit of 0.800 m/s2 (given)" in joined(ended.out)
+    assert "the limit of 0.800 m/s2 (as specified)" in joined(ended.out)
     assert "90 % peak, m/s2" in ended.out
     assert "Chance of a peak above 0.800 m/s2 there" in ended.out
     (judged,) = [d["judgement"] for d in no_nan(here(*asked, "--json").out)["cases"][0]["deck"]]
-    assert (judged["value"]["share"], judged["value"]["value"]) == (0.9, peaks[215])
+    assert (judged["value"]["share"], judged["value"]["value"]) == (0.9, peaks[287])
     assert (judged["limit"], judged["target"], judged["class_name"]) == (0.8, None, None)
-    assert judged["exceedance"]["value"] == pytest.approx(sum(p > 0.8 for p in peaks) / 240, abs=1e-15)
+    assert judged["exceedance"]["value"] == pytest.approx(sum(p > 0.8 for p in peaks) / 320, abs=1e-15)
 
 
 @pytest.mark.parametrize(("family", "law"), [("gumbel", "Gumbel law"), ("gev", "Generalised extreme value law")])
@@ -403,8 +404,8 @@ WRONG_CALLS = {
     "missing file": ("compare none.h5", "none.h5: no such file"),
     "a folder": ("compare .", "no such file"),
     "not HDF5": ("compare note.h5", "note.h5: no HDF5 file"),
-    "a scenario for a run": (f"compare {ONE}", "no HDF5 file"),
-    "a run for a scenario": ("estimate walker.h5", "walker.h5"),
+    "a scenario for a run": (f"compare {ONE}", "a scenario, no results file; run simulate first"),
+    "a run for a scenario": ("estimate walker.h5", "is a results file, no scenario"),
     "foreign HDF5": ("compare other.h5", "other.h5: not a results file of crowdsim"),
     "another format": ("compare newer.h5", "newer.h5: written in format 99; this program reads up to 1"),
     "plot of another format": ("plot newer.h5 envelope -o x.png", "written in format 99"),
@@ -426,13 +427,13 @@ WRONG_CALLS = {
     "no limit": ("compare walker.h5 --limit nan", "above 0, in m/s2"),
     "law": ("compare walker.h5 --fit other", "'gumbel'"),
     "estimate of an unknown case": (f"estimate {COMMUTERS} --case evening", "weekday morning, quiet noon"),
-    "which case": (f"sensitivity {COMMUTERS}", "name one of them: weekday morning, quiet noon"),
+    "which case": (f"sensitivity {COMMUTERS}", "name one with --case: weekday morning, quiet noon"),
     "no such case": (f"sensitivity {COMMUTERS} --case evening", "no case is called 'evening'"),
     "into another scenario's file": (f"sensitivity {MARKET} --into walker.h5", "holds results of another scenario"),
     "into nothing": (f"sensitivity {ONE} --into none.h5", "none.h5: no such file"),
     "into a note": (f"sensitivity {ONE} --into note.h5", "no HDF5 file"),
     "bars with an ending": (f"sensitivity {ONE} -o x.jpg", "a figure ends in .png, .svg or .pdf"),
-    "bars too narrow": (f"sensitivity {ONE} -o x.png --width 10", "60 to 400 mm are possible"),
+    "bars too narrow": (f"sensitivity {ONE} -o x.png --width 10", "110 to 400 mm are possible"),
 }
 
 

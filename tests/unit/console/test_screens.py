@@ -17,12 +17,14 @@ from crowdsim.results.judgement import Judgement
 from crowdsim.results.sensitivity import Sensitivity
 from crowdsim.results.texts import number, percent, span
 from crowdsim.study.compare import Comparison
+from crowdsim.study.estimate import STEADY, WEIGHTS
 
 from .conftest import NAMES, Recorder, Screen, Shown, Table
 
 Show = Callable[[str, str, int], Screen]
 COMMANDS = ("summary", "compare", "estimate", "sensitivity", "check")
 WIDTHS = (60, 80, 100, 120)
+ALIKE = (WEIGHTS.format("1"), WEIGHTS.format("2"))  # not shown where they say the same as the steady state
 UNFOLDED = 10_000  # letters: every paragraph on one line
 
 
@@ -135,7 +137,7 @@ def test_the_next_worse_class_is_shown_though_not_seen(
 
 
 def test_a_class_that_was_not_seen_is_not_impossible(show: Show, comparisons: dict[str, Comparison]) -> None:
-    """The commuters never reach the last class in 240 windows: 0 %, and an upper end above it."""
+    """The commuters never reach the last class in 320 windows: 0 %, and an upper end above it."""
     morning = judged(comparisons["weekday-commuters"])[0]
     name, share = morning.chances[-1]
     assert (name, share.value) == ("CL4", 0.0)
@@ -184,10 +186,12 @@ def test_numbers_shown_are_those_of_the_run(show: Show, comparisons: dict[str, C
             assert p.high is not None
             row = rf"{re.escape(point.name)} .*{whole(number(p.value))} +{number(p.low)} to {number(p.high)} "
             assert re.search(row, text)
-        for row in comparisons[name].leading(case.name):
-            if row.method.value is not None and row.ratio is not None:
-                cells = (row.method.name, number(row.method.value), number(row.simulated or 0.0), number(row.ratio))
-                assert re.search("[^\n]*".join(map(whole, cells)), text), cells
+        rows = {r.method.name: r for r in comparisons[name].leading(case.name) if r.ratio is not None}
+        for row in rows.values():
+            cells = [row.method.name, *(number(x or 0.0) for x in (row.method.value, row.simulated, row.ratio))]
+            if row.method.name in ALIKE and row.method.value == pytest.approx(rows[STEADY].method.value, rel=1e-12):
+                cells = ["By weights with C = 1 or 2: the same as the steady state."]
+            assert re.search("[^\n]*".join(map(whole, cells)), text), cells
 
 
 @pytest.mark.parametrize("name", NAMES)
@@ -207,6 +211,24 @@ def test_what_the_intervals_leave_out(
     assert console.screen.said[at + 1].startswith(f"The 95 % peak of {studies[name].case} in ")
 
 
+@pytest.mark.parametrize("width", [60, 120])
+@pytest.mark.parametrize("command", ["summary", "compare"])
+def test_a_run_that_was_stopped_says_so_first(shown: Shown, command: str, width: int) -> None:
+    """Below the title: how many of how many, and which case was not begun."""
+    whole_run = shown.comparisons["weekday-commuters"]
+    part = replace(whole_run.summary, cases=whole_run.summary.cases[:1], complete=False, asked=12_000)
+    stopped = replace(shown, comparisons={"stopped": replace(whole_run, summary=part)})
+    said = "INCOMPLETE: 80 of 12,000 realisations of weekday morning; not simulated: quiet noon."
+    console = Recorder(width)
+    stopped.on(console, command, "stopped")
+    title, rest = console.text().split("\n", 1)
+    assert title == part.title
+    assert " ".join(rest.split()).startswith(said)
+    console = Recorder(width)
+    shown.on(console, command, "weekday-commuters")
+    assert "INCOMPLETE" not in console.text()
+
+
 @pytest.mark.parametrize("name", NAMES)
 def test_fits_say_where_they_extrapolate(show: Show, comparisons: dict[str, Comparison], name: str) -> None:
     said = show("compare", name, 80).said
@@ -218,7 +240,7 @@ def test_fits_say_where_they_extrapolate(show: Show, comparisons: dict[str, Comp
         ]  # fmt: skip
         marked = re.findall(r"([0-9.]+) %: [^;]* EXTRAPOLATED beyond the windows simulated", percentiles)
         assert marked == [f"{100 * q.share:g}" for q in law.quantiles if q.extrapolated]
-        assert "99.9" in marked  # 80 realisations have at most 240 windows
+        assert "99.9" in marked  # 80 realisations have at most 320 windows
 
 
 def test_a_case_without_a_law_says_why(comparisons: dict[str, Comparison]) -> None:

@@ -141,14 +141,14 @@ def test_en_1990_has_a_limit_of_its_own(direction: str, limit: float, at_95: flo
 
 def test_the_owners_limit_in_place_of_that_of_en_1990() -> None:
     said = judged(hundred(0.1, 0.5, 0.55, 0.58), criterion="en-1990", limit=0.5)
-    assert (said.limit, said.limit_words, said.verdict) == (0.5, "the owner's", "undecided")
+    assert (said.limit, said.limit_words, said.verdict) == (0.5, "as specified", "undecided")
 
 
 def test_the_owners_limit_beside_classes() -> None:
     """The class still stands, the verdict is of the limit."""
     said = judged(hundred(0.4, 0.75, 0.8, 0.9), limit=0.7)
     assert (said.class_name, said.target, said.limit, said.verdict) == ("CL2", None, 0.7, "not met")
-    assert "the limit of 0.700 m/s2 (the owner's) is not met" in said.sentence
+    assert "the limit of 0.700 m/s2 (as specified) is not met" in said.sentence
     assert [name for name, _ in said.chances] == ["CL1", "CL2", "CL3", "CL4"]
 
 
@@ -173,7 +173,7 @@ def test_asked() -> None:
     """Given beside the scenario, then the owner's, then the class's, then the criterion's own."""
     eur, en = CRITERIA["eur-23984"], CRITERIA["en-1990"]
     found = asked(attributes(target="CL1"), "vertical", 0.3)
-    assert (found.criterion, found.target, found.limit, found.words) == (eur, None, 0.3, "given")
+    assert (found.criterion, found.target, found.limit, found.words) == (eur, None, 0.3, "as specified")
     assert asked(attributes(limit=0.6), "lateral").limit == 0.6
     assert asked(attributes(target="CL1"), "lateral").limit == 0.10
     assert asked(attributes(), "vertical").limit is None
@@ -390,10 +390,10 @@ def test_another_limit() -> None:
     """In place of the target; the class stays."""
     peaks = hundred(0.4, 0.75, 0.8, 0.9)
     said = judged(peaks, question=Question(limit=0.85), target="CL2")
-    assert (said.target, said.limit, said.limit_words, said.class_name) == (None, 0.85, "given", "CL2")
+    assert (said.target, said.limit, said.limit_words, said.class_name) == (None, 0.85, "as specified", "CL2")
     assert said.verdict == "undecided"
     assert said.exceedance == window_exceedance(peaks, 0.85)
-    assert "the limit of 0.850 m/s2 (given)" in said.sentence
+    assert "the limit of 0.850 m/s2 (as specified)" in said.sentence
     assert judged(peaks, question=Question(limit=0.9), target="CL2").verdict == "met"
 
 

@@ -77,6 +77,18 @@ def test_nothing_asked_and_no_interval() -> None:
     assert "reaches" not in text
 
 
+def test_no_verdict_without_an_interval() -> None:
+    """Nor a number of realisations that would decide: it would rest on next to nothing."""
+    few = judgement(**valued(None, None), verdict="undecided", needed=93, class_low=None, class_high=None)
+    assert sentence(few).endswith(
+        "; no verdict on the limit of 1.00 m/s2 (upper bound of CL2, EUR 23984 (2009)) below 72 realisations."
+    )
+    assert "93" not in sentence(few)
+    assert note(few, EUR) == "no interval of the 95 % value, hence no verdict, below 72 realisations"
+    tenth = replace(few, **valued(None, None, share=0.9))
+    assert sentence(tenth).endswith(" below 36 realisations.")
+
+
 @pytest.mark.parametrize(
     ("low", "high", "words"),
     [
