@@ -173,6 +173,7 @@ def sensitivity(
     from crowdsim.console.base import Console
     from crowdsim.console.progress import RunProgress
     from crowdsim.console.sensitivity import sensitivity as show
+    from crowdsim.errors import ResultsError
     from crowdsim.results.sensitivity import cases_for, write_sensitivity
     from crowdsim.scenario.reader import read_scenario
     from crowdsim.study.sensitivity import sensitivity as study
@@ -180,7 +181,9 @@ def sensitivity(
     console = Console(quiet=quiet, json=json)
     read = read_scenario(scenario)
     if into is not None:  # what cannot be kept is said before a minute of work
-        cases_for(into, read.text)
+        kept = cases_for(into, read.text)
+        if case is not None and case not in kept:
+            raise ResultsError(f"{into}: has no case {case!r}; cases there: {', '.join(kept)}")
     if out is not None:
         from crowdsim.plots.save import check_place, check_width
         from crowdsim.plots.sensitivity import NARROWEST

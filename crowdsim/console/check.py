@@ -6,7 +6,7 @@ from dataclasses import asdict
 from math import isfinite
 from typing import Any
 
-from crowdsim.console.base import Console
+from crowdsim.console.base import CAUTION, Console
 from crowdsim.console.screening import screening
 from crowdsim.guides.catalogue import CRITERIA
 from crowdsim.results.judgement import LOADED
@@ -44,13 +44,14 @@ def check(console: Console, plan: Plan) -> None:
                      f"{number(m.modal_mass, 4)} kg", span(m.time_constant), "; ".join(shapes)])  # fmt: skip
     columns = [("mode", "l"), ("frequency", "r"), ("damping", "r"), ("modal mass", "r"), ("1/(zeta omega)", "r"),
                ("ordinates", "l")]  # fmt: skip
-    console.table("Modes", columns, rows)
+    console.table("Modes", columns, rows, spare=("1/(zeta omega)", "modal mass"))
     screening(console, tuple(screen(plan.cases)))
     for case in plan.cases:
         _case(console, plan, case)
     console.items("Findings", [f"{f.level}: {f.line()}" for f in plan.findings])
     if not plan.findings:
         console.out.print("No findings.")
+    console.line(CAUTION)
 
 
 def _case(console: Console, plan: Plan, case: Case) -> None:
@@ -66,7 +67,7 @@ def _case(console: Console, plan: Plan, case: Case) -> None:
     ]  # fmt: skip
     columns = [("stream", "l"), ("pace", "l"), ("speed, mean on deck", "r"), ("weight", "l"), ("load", "l"),
                ("on deck", "r")]  # fmt: skip
-    console.table("Streams", columns, rows)
+    console.table("Streams", columns, rows, spare=("weight", "speed, mean on deck"))
     c = case.choice
     console.out.print(
         f"Time step 1/{c.per_second} s, force sampled at every {_ordinal(c.factor)}step, "

@@ -76,7 +76,7 @@ def _points(console: Console, case: CaseSummary) -> None:
         rows = [[*_place(p), _chance(p.exceedance), _chance(p.window_exceedance)] for p in case.points]
         columns = [*place, (f"in {record}", "r"), (f"in {window}", "r")]
         title = f"Chance of a peak above {number(judged.limit)} m/s2 there"
-        console.table(title, columns, rows, spare=("direction", "e, m", "s, m"))
+        console.table(title, columns, rows, spare=("direction", "e, m", "s, m", f"in {record}"))
 
 
 def _place(point: PointSummary) -> list[str]:

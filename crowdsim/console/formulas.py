@@ -35,7 +35,7 @@ def formulas(console: Console, methods: Sequence[Method]) -> None:
         for m in methods
         if m.value is not None
     ]
-    columns = [("mode", "k"), ("harmonic", "k"), ("who", "l"), ("formula", "k"), ("measure", "k"), ("value", "r"),
+    columns = [("mode", "k"), ("harmonic", "k"), ("who", "l"), ("formula", "l"), ("measure", "k"), ("value", "r"),
                ("unit", "k")]  # fmt: skip
     console.table("Hand formulas", columns, rows, spare=("who", "measure", "harmonic"))
     nothing: dict[str, list[str]] = {}

@@ -33,7 +33,7 @@ def sensitivity(console: Console, result: Sensitivity) -> None:
         for said in (v.source, *v.note.split("; ")):
             if said:
                 remarks.setdefault(said, []).append(v.label)
-    columns = [("of", "k"), ("changed to", "l"), ("95 % peak, m/s2", "r"), ("change", "r"), ("its 95 % interval", "r")]
+    columns = [("of", "l"), ("changed to", "l"), ("95 % peak, m/s2", "r"), ("change", "r"), ("95 % interval", "r")]
     console.table("One change at a time", columns, rows, spare=("95 % peak, m/s2",))
     console.items("Where the other values come from", [f"{', '.join(of)}: {said}" for said, of in remarks.items()])
     console.line(result.text())

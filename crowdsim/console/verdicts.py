@@ -67,7 +67,14 @@ def table(console: Console, cases: Sequence[CaseSummary]) -> None:
     columns = [("case", "l"), ("direction", "k"), ("persons", "r"), ("window", "r"), (f"{share} peak, m/s2", "r"),
                ("its 95 % interval", "r"), ("class", "k"), ("chance of each class", "l"), ("asked", "l"),
                ("verdict", "l")]  # fmt: skip
-    spare = ("direction", *(("window",) if len(windows) == 0 else ()), "chance of each class", "persons")
+    spare = (
+        "direction",
+        *(("window",) if len(windows) == 0 else ()),
+        "chance of each class",
+        "persons",
+        "asked",
+        "its 95 % interval",
+    )
     console.table(f"Cases: largest peak anywhere on the deck in one {time}", columns, rows, spare)
 
 

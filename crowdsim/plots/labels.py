@@ -197,6 +197,7 @@ class _Room:
 
     def place(self, wanted: Sequence[tuple[Floats, Floats, str, str]]) -> None:
         """Finds a place for every label, the most constrained (points) first."""
+        wanted = [label for label in wanted if label[0].size]  # nothing drawn needs no name
         anchors = [self._anchors(x, y) for x, y, _, _ in wanted]
         widest = max(0.45 * self.scale[0], 76.0) * 25.4 / 72.0
         for i in sorted(range(len(wanted)), key=lambda i: wanted[i][0].size > 1):

@@ -16,7 +16,8 @@ def number(value: float, digits: int = 3) -> str:
         return "0"
     if not 1e-4 <= abs(value) < 1e6:
         return f"{value:.{digits - 1}e}"
-    places = max(0, digits - 1 - floor(log10(abs(value))))
+    rounded = float(f"{value:.{digits - 1}e}")  # 0.9996 has the places of 1.00
+    places = max(0, digits - 1 - floor(log10(abs(rounded))))
     return f"{value:,.{places}f}"
 
 
@@ -31,6 +32,8 @@ def percent(share: float) -> str:
     if 0.999 < share < 1.0:
         return "over 99.9 %"
     value = 100.0 * share
+    if value < 10.0:
+        value = float(f"{value:.1e}")  # 9.96 has the places of 10
     if value in (0.0, 100.0):
         return f"{value:.0f} %"
     places = 0 if 10.0 <= value < 98.95 else 1 if value >= 1.0 else 1 - floor(log10(value))

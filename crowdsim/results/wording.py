@@ -121,4 +121,4 @@ def buys(found: Judgement) -> str:
 
 
 def _percent(share: float) -> str:
-    return f"{100 * share:.0f} %" if share >= 0.1 else f"{100 * share:.2g} %"
+    return f"{100 * share:.0f} %" if share >= 0.1 else f"{max(100 * share, 0.01):.2g} %"

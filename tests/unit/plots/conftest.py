@@ -18,8 +18,8 @@ from crowdsim.study.simulate import simulate
 SCENARIOS = Path(crowdsim.__file__).parents[1] / "scenarios"
 # what is changed so that the test is quick; 80 realisations are enough for an interval
 SHORTER = {
-    "market-day": (4, '"15 min"', '"2 min"'),
-    "weekday-commuters": (80, '"15 min"', '"8 min"'),
+    "market-day": (4, '"16 min"', '"2 min"'),
+    "weekday-commuters": (80, '"16 min"', '"8 min"'),
     "one-walker": (80, "75.0", "75.0"),
     "joggers-among-walkers": (12, '"10 min"', '"10 min"'),
     "lantern-evening": (12, '"5 min"', '"5 min"'),
