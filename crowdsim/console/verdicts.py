@@ -104,6 +104,6 @@ def verdict_text(judged: Judgement) -> str:
     """The verdict in short."""
     if judged.verdict is None:
         return "-"
-    return (
-        f"undecided; about {judged.needed:,} realisations may decide" if judged.needed is not None else judged.verdict
-    )
+    if judged.needed is None or judged.value.low is None:
+        return judged.verdict
+    return f"undecided; about {judged.needed:,} realisations may decide"
