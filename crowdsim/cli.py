@@ -195,11 +195,11 @@ def sensitivity(
     show(console, result)
     if into is not None:
         write_sensitivity(into, read.text, result)
-        console.note(f"kept in {into}")
+        console.path(f"kept in {into}")
     if out is not None:
         from crowdsim.plots.sensitivity import draw_sensitivity
 
-        console.note(f"drawn: {draw_sensitivity(result, out, width=width)}")
+        console.path(f"drawn: {draw_sensitivity(result, out, width=width)}")
 
 
 @app.command()

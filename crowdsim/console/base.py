@@ -35,6 +35,11 @@ class Console:
         if not self.quiet:
             self.err.print(text)
 
+    def path(self, text: str) -> None:
+        """A line with a path, on standard error and never folded, unless quiet."""
+        if not self.quiet:
+            self.err.print(text, soft_wrap=True)
+
     def heading(self, text: str) -> None:
         """A line that stands out."""
         self.out.print(text, style="bold")

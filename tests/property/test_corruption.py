@@ -27,7 +27,7 @@ Writer = Callable[[Any], str]
 
 EVERYTHING: Tables = {
     "scenario": {"title": "All keys", "note": "valid as it stands"},
-    "deck": {"length": 40.0, "width": 3.0},
+    "deck": {"length": 40.0, "width": 3.0, "construction": "steel"},
     "mode": [
         {"name": "V1", "frequency": 1.9, "damping": 0.005, "modal_mass": 40000.0,
          "vertical": {"half_waves": 1, "amplitude": 1.0}},

@@ -201,15 +201,20 @@ def recorded(said: Comparison, case: str) -> dict[str, float]:
     return {mode: points[f"{mode} vertical"].peak.p95.value for mode in ("V1", "V2")}
 
 
+def leading_modes(rows: tuple[Compared, ...]) -> set[str]:
+    """Modes of the rows; of the others stands what the random stream gives, at the end."""
+    return {r.method.mode for r in rows if r.method.name != STREAM_SD} | {rows[0].method.mode}
+
+
 def test_the_leading_mode_is_that_with_the_largest_recorded_peak(said: Comparison) -> None:
     """V1 with the first harmonic: 0.4 against 0.1 of the weight on V2."""
     for case in ("day", "people"):
         peaks = recorded(said, case)
         assert peaks["V1"] > peaks["V2"]
         leading = said.leading(case)
-        assert {r.method.mode for r in leading} == {"V1"}
+        assert leading_modes(leading) == {"V1"}
         assert {r.method.case for r in leading} == {case}
-        names = [r.method.name for r in leading if r.method.direction == "vertical"]
+        names = [r.method.name for r in leading if r.method.direction == "vertical" and r.method.mode == "V1"]
         assert len(names) == len(set(names))
         assert {STEADY, CROSSING, SQUARE_ROOT, STREAM_SD, STREAM_PEAK, NARROW_SD, NARROW_PEAK} <= set(names)
         assert {r.method.measure for r in leading} == {PEAK, RMS}
@@ -228,7 +233,7 @@ def test_the_second_mode_leads_where_it_is_light(scenario: Callable[..., Scenari
     found = compare_file(out)
     assert recorded(found, "day")["V2"] > recorded(found, "day")["V1"]
     leading = found.leading("day")
-    assert {r.method.mode for r in leading} == {"V2"}
+    assert leading_modes(leading) == {"V2"}
     assert {r.method.harmonic for r in leading} == {2, None}
     assert {STEADY, CROSSING, STREAM_SD} <= {r.method.name for r in leading}
 
@@ -249,8 +254,8 @@ def test_the_record_decides_which_mode_leads_not_the_formula(
         assert points != case.points
         summary = replace(said.summary, cases=(replace(case, points=points), *said.summary.cases[1:]))
         found = compare(summary, scenario(*CHANGES))
-        assert {r.method.mode for r in found.leading(case.name)} == {leads}
-        assert {r.method.mode for r in found.leading("people")} == {"V1"}
+        assert leading_modes(found.leading(case.name)) == {leads}
+        assert leading_modes(found.leading("people")) == {"V1"}
 
 
 def test_the_harmonic_is_that_of_the_largest_crossing(said: Comparison, scenario: Callable[..., Scenario]) -> None:
@@ -262,7 +267,7 @@ def test_the_harmonic_is_that_of_the_largest_crossing(said: Comparison, scenario
             f"pace = {{ mean = 3.6, sd = 0.1, min = 3.2, max = 4.0 }}\nload = {{ harmonics = [{factor}] }}\n"
         )
         leading = compare(lead, scenario(*CHANGES, ("", run))).leading("day")
-        assert {r.method.mode for r in leading} == {"V2"}
+        assert leading_modes(leading) == {"V2"}
         assert {(r.method.stream, r.method.harmonic) for r in leading if r.method.harmonic} == {expected}
         assert [r.method.name for r in leading].count(CROSSING) == 1
 

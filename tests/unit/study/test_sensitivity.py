@@ -234,7 +234,7 @@ def test_pairing_helps(crowd: tuple[Scenario, Sensitivity, Watch]) -> None:
 
 def test_errors(scenario: Read) -> None:
     two = '[[case]]\nname = "day"\n[[case]]\nname = "night"\n'
-    with pytest.raises(InputError, match=r"case: 2 cases \(name one of them: day, night\)"):
+    with pytest.raises(InputError, match=r"case: 2 cases \(name one with --case: day, night\)"):
         sensitivity(scenario(("", two)))
     with pytest.raises(InputError, match="no case is called 'noon'"):
         sensitivity(scenario(("", two)), case="noon")
