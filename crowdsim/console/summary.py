@@ -9,10 +9,10 @@ from crowdsim.results.texts import number, span
 from crowdsim.study.compare import Comparison
 
 
-def summary(console: Console, comparison: Comparison, *, json: bool = True) -> None:
+def summary(console: Console, comparison: Comparison) -> None:
     """Every case with its verdict, the formulas beside it, what was assumed and what was not varied."""
     said = comparison.summary
-    if console.json and json:
+    if console.json:
         console.data(comparison.as_dict())
         return
     if console.quiet:

@@ -12,7 +12,7 @@ from crowdsim.guides.eur_23984 import EUR_23984
 from crowdsim.guides.setra_2006 import SETRA_2006
 from crowdsim.results.texts import number
 from crowdsim.study.resonances import reaching
-from crowdsim.study.situation import Situation
+from crowdsim.study.situation import Situation, people_mass
 
 FULL = 70.0  # kg/m2: one person of 70 kg a square metre, the loaded deck of Setra 2006, from memory
 HARMONICS = (("walking", 1), ("walking", 2), ("jogging", 1))  # that sources have ranges for
@@ -65,12 +65,7 @@ def _harmonics(situations: Sequence[Situation]) -> list[tuple[str, int]]:
 
 
 def _with_people(bare: ModalModel, mode: Mode, now: Situation) -> float:
-    added = 0.0
-    for stream in now.streams:
-        x, w = stream.walkers.offset.nodes
-        added += (
-            stream.persons * stream.mean_mass * bare.mean_square(mode, float((w * x).sum()), float((w * x * x).sum()))
-        )
+    added = people_mass(bare, mode, now.streams)
     return bare.with_mass({mode.name: added}).mode(mode.name).frequency
 
 

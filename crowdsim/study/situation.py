@@ -112,7 +112,7 @@ def situation(scenario: Scenario, table: CaseTable) -> Situation:
         streams = tuple(_stream(s, model, scenario.source) for s in chosen)
         if table.people == "none":
             break
-        found = {m.name: _people_mass(bare, m, streams) for m in bare.modes}
+        found = {m.name: people_mass(bare, m, streams) for m in bare.modes}
         change = max(abs(found[k] - added[k]) / bare.mode(k).modal_mass for k in found)
         added, model = found, bare.with_mass(found)
         if change < 1e-12:
@@ -240,7 +240,8 @@ def _load(table: StreamTable, sources: list[str]) -> loads.LoadSet:
     return chosen
 
 
-def _people_mass(bare: ModalModel, mode: Mode, streams: tuple[Stream, ...]) -> float:
+def people_mass(bare: ModalModel, mode: Mode, streams: tuple[Stream, ...]) -> float:
+    """What the people of the streams, spread evenly, add to the modal mass of a mode [kg]."""
     total = 0.0
     for s in streams:
         e = s.walkers.offset
